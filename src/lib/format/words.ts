@@ -1,0 +1,35 @@
+/** The words of senses, roles, states and map kinds, the same on every screen. */
+import type { Objective, Role, ShapeState } from '$lib/api/schemas';
+
+export const senseWords: Record<Objective['sense'], string> = {
+	minimise: 'as low as possible',
+	maximise: 'as high as possible',
+	hold: 'hold as it is'
+};
+
+export const roleWords: Record<Role, { name: string; can: string }> = {
+	engineer: { name: 'Engineer', can: 'uploads, moves, enters results, decides who is in the study' },
+	reviewer: { name: 'Reviewer', can: 'reads everything; comments and keep-outs' },
+	viewer: { name: 'Viewer', can: 'reads everything' }
+};
+
+export const stateWords: Record<ShapeState, { name: string; means: string }> = {
+	baseline: { name: 'baseline', means: 'where the study starts' },
+	open: { name: 'open', means: 'waits for the solver' },
+	judged: { name: 'judged', means: 'has a result' }
+};
+
+/** `baseline`, `shape 4` */
+export function shapeNumber(number: number): string {
+	return number === 0 ? 'baseline' : `shape ${number}`;
+}
+
+/** `ME` for Mara Ekdal: first letters of the first and the last name. */
+export function initials(name: string): string {
+	const parts = name.trim().split(/\s+/).filter(Boolean);
+	const letters = parts.length > 1 ? [parts[0], parts[parts.length - 1]] : [parts[0] ?? '?'];
+	return letters
+		.map((part) => [...part][0])
+		.join('')
+		.toUpperCase();
+}
