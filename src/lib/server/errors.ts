@@ -31,7 +31,7 @@ const TABLE = {
 
 export type ErrorCode = keyof typeof TABLE;
 
-/** One field at fault: an RFC 6901 JSON pointer into the body, or `?name` for a query value. */
+/** One field at fault: an RFC 6901 JSON pointer into the body; for a query value `/name`. */
 export interface FieldError {
 	pointer: string;
 	detail: string;

@@ -1,0 +1,10 @@
+import { asAppError, toProblem } from '../errors';
+
+/** An RFC 9457 answer for whatever was thrown. */
+export function problemResponse(thrown: unknown): Response {
+	const error = asAppError(thrown);
+	const headers = new Headers({ 'content-type': 'application/problem+json', 'cache-control': 'no-store' });
+	if (error.status === 401) headers.set('www-authenticate', 'Bearer realm="Planish"');
+	if (error.retryAfter !== undefined) headers.set('retry-after', String(Math.ceil(error.retryAfter)));
+	return new Response(JSON.stringify(toProblem(error)), { status: error.status, headers });
+}
