@@ -43,7 +43,7 @@ const THROWAWAY = [...DURABLE, 'fsync=off', 'synchronous_commit=off', 'full_page
  * @param {string} [version] the major version that a cluster was made with
  * @returns {string | null} the newest version's programs, or those of the version asked for
  */
-function findBinaries(version) {
+export function findBinaries(version) {
 	if (!existsSync(INSTALLED)) return null;
 	const found = readdirSync(INSTALLED)
 		.filter((name) => existsSync(join(INSTALLED, name, 'bin', 'initdb')))
@@ -237,7 +237,8 @@ async function clearStalePid(folder) {
 	for (let waited = 0; waited < 10_000 && processesIn(folder).length > 0; waited += 100) await sleep(100);
 	if (!existsSync(file) || processesIn(folder).length > 0) return;
 	const pid = Number(readFileSync(file, 'utf8').split('\n')[0]);
-	if (identify(pid)) rmSync(file);
+	// Also a dead one that nobody has collected yet counts as alive for PostgreSQL.
+	if (existsSync(`/proc/${pid}`)) rmSync(file);
 }
 
 /**
