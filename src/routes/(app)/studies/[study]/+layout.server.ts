@@ -1,4 +1,4 @@
-import { loadFrom } from '$lib/api/load';
+import { loadFrom } from '$lib/api/server';
 import type { LayoutServerLoad } from './$types';
 
 export const load: LayoutServerLoad = async ({ fetch, params, depends }) => {
