@@ -1,7 +1,7 @@
 /** Every reason for which the server refuses, one table to HTTP, and the RFC 9457 answer that requests and jobs share. */
 import { randomUUID } from 'node:crypto';
 import type { Problem } from '$lib/api/schemas';
-import { MorphError, type MorphErrorCode, type MorphPlace } from '$lib/morph/errors';
+import type { MorphError, MorphErrorCode, MorphPlace } from '$lib/morph';
 import { log } from './log';
 
 const TABLE = {
@@ -111,6 +111,10 @@ function morphPointer(code: MorphErrorCode, place: MorphPlace | undefined): stri
 	return undefined;
 }
 
+/** By its name: this module is part of every request's path, which has no use for the engine itself. */
+const isMorphError = (thrown: unknown): thrown is MorphError =>
+	thrown instanceof Error && thrown.name === 'MorphError' && Object.hasOwn(MORPH_CODES, (thrown as MorphError).code);
+
 function fromMorph(error: MorphError): AppError {
 	const pointer = morphPointer(error.code, error.place);
 	return new AppError(MORPH_CODES[error.code], error.message, {
@@ -129,7 +133,7 @@ export function asAppError(thrown: unknown): AppError {
 		if (thrown.status >= 500) log.error({ err: thrown, code: thrown.code }, thrown.message);
 		return thrown;
 	}
-	if (thrown instanceof MorphError) return fromMorph(thrown);
+	if (isMorphError(thrown)) return fromMorph(thrown);
 	const errorId = randomUUID();
 	if (thrown instanceof Error && /^Sequelize(Connection|HostNot|AccessDenied)/.test(thrown.name)) {
 		log.error({ err: thrown, errorId }, 'the database does not answer');

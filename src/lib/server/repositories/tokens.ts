@@ -1,5 +1,4 @@
 /** Queries about API tokens. Only a token's SHA-256 is kept. */
-import { Op, type WhereOptions } from 'sequelize';
 import { database } from '../db/client';
 import { ApiTokenModel, UserModel } from '../db/models/people';
 import type { Tx } from './transaction';
@@ -43,11 +42,16 @@ export async function insertToken(
 }
 
 /** Revokes it if it is the person's own (or anybody's, for null). Revoking again keeps the first time. */
-export async function revokeToken(id: string, userId: string | null, tx: Tx): Promise<TokenRow | null> {
-	const where: WhereOptions<ApiTokenModel> = userId ? { id, userId } : { id };
-	await tokens().update(
+export async function revokeToken(
+	id: string,
+	userId: string | null,
+	tx: Tx
+): Promise<{ row: TokenRow; revokedNow: boolean } | null> {
+	const where = userId ? { id, userId } : { id };
+	const [count] = await tokens().update(
 		{ revokedAt: new Date() },
-		{ where: { [Op.and]: [where, { revokedAt: null }] }, transaction: tx }
+		{ where: { ...where, revokedAt: null }, transaction: tx }
 	);
-	return (await tokens().findOne({ where, include: withOwner, transaction: tx })) as TokenRow | null;
+	const row = (await tokens().findOne({ where, include: withOwner, transaction: tx })) as TokenRow | null;
+	return row && { row, revokedNow: count > 0 };
 }

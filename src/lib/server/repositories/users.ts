@@ -1,4 +1,5 @@
 /** Queries about people. */
+import { UniqueConstraintError } from 'sequelize';
 import { database } from '../db/client';
 import { UserModel } from '../db/models/people';
 import type { Tx } from './transaction';
@@ -37,10 +38,18 @@ export const lockUser = (id: string, tx: Tx): Promise<UserRow | null> =>
 export const lockActiveAdmins = (tx: Tx): Promise<UserRow[]> =>
 	users().findAll({ where: { isAdmin: true, active: true }, order: ['id'], transaction: tx, lock: tx.LOCK.UPDATE });
 
-export const insertUser = (
+/** @returns null when the e-mail is taken, which ends the transaction's use */
+export async function insertUser(
 	values: { email: string; name: string; passwordHash: string; isAdmin: boolean },
 	tx: Tx
-): Promise<UserRow> => users().create(values, { transaction: tx });
+): Promise<UserRow | null> {
+	try {
+		return await users().create(values, { transaction: tx });
+	} catch (thrown) {
+		if (thrown instanceof UniqueConstraintError) return null;
+		throw thrown;
+	}
+}
 
 export const changeUser = (user: UserRow, changes: UserChanges, tx: Tx): Promise<UserRow> =>
 	user.update(changes, { transaction: tx });
