@@ -2,7 +2,7 @@
 export { MorphError, type MorphErrorCode, type MorphPlace } from './errors';
 export type * from './types';
 export { readStl, type ReadStlOptions } from './stl-read';
-export { stlByteLength, stlChunks, writeStl, type WriteStlOptions } from './stl-write';
+export { binaryKeepsPatchNames, stlByteLength, stlChunks, writeStl, type WriteStlOptions } from './stl-write';
 export { weldTriangles } from './weld';
 export { surfaceMeasures } from './measures';
 export { geometry, makeSurface, meshToSurface, toMetres, volumeGradient, volumeOf } from './surface';
