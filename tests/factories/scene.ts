@@ -1,10 +1,11 @@
 /** A study with its people on a server under test, and the calls that most tests begin with. */
 import { expect } from 'vitest';
+import type { z } from 'zod';
 import type {
 	Box,
 	BoxCreate,
 	Job,
-	MapReport,
+	mapImported,
 	MoveAnswer,
 	Objective,
 	Problem,
@@ -143,7 +144,7 @@ export class Scene {
 		shapeId: string,
 		csv: string,
 		query: Record<string, string> = {}
-	): Promise<MapReport & { mapId: string }> {
+	): Promise<z.infer<typeof mapImported>> {
 		return resultOf(await upload(this.server, this.token, this.mapPath(shapeId, query), csv));
 	}
 
