@@ -17,9 +17,9 @@ const FOLDER = join(ROOT, '.svelte-kit', 'bundles');
 
 await main(async () => {
 	const settings = readSettings();
-	const stopping = stopRequested();
 	const claimed = await claim(settings);
 	if (!claimed) return 0;
+	const stopping = stopRequested();
 	let database;
 	let server;
 	try {

@@ -11,9 +11,9 @@ import { readSettings } from './lib/settings.mjs';
 
 await main(async () => {
 	const settings = readSettings();
-	const stopping = stopRequested(() => note('Still stopping; it takes some seconds.'));
 	const claimed = await claim(settings);
 	if (!claimed) return 0;
+	const stopping = stopRequested(() => note('Still stopping; it takes some seconds.'));
 	// A signal during the preparation ends the program that runs, so that serve() fails and cleans up behind itself.
 	void stopping.then(endChildren);
 	try {

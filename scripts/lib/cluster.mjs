@@ -70,6 +70,9 @@ async function ensureBinaries(folder) {
 	return installed;
 }
 
+/** PostgreSQL's own commands are short, and stopped halfway they would leave a server that nobody knows of. */
+const HERE = { cwd: '/', finish: true };
+
 /** @param {string} name */
 function userNamed(name) {
 	/** @param {string} option */
@@ -110,7 +113,7 @@ export async function findCluster(data) {
 		}
 		// The data folder is ours to open; its parents are not.
 		if ((statSync(data).mode & 0o001) === 0) chmodSync(data, (statSync(data).mode & 0o777) | 0o001);
-		const entered = await run(...asOwner('test', ['-x', dirname(home)], owner), { cwd: '/' });
+		const entered = await run(...asOwner('test', ['-x', dirname(home)], owner), HERE);
 		if (entered.code !== 0) {
 			const name = createHash('sha256').update(data).digest('hex').slice(0, 12);
 			if (known.home) throw new Trouble(`The user ${owner.name} cannot enter ${dirname(home)}, where the database is.`);
@@ -163,7 +166,7 @@ async function makeCluster({ folder, bin, owner, password }, throwaway) {
 	try {
 		const args = ['-D', unfinished, '-U', 'planish', '-A', 'scram-sha-256', `--pwfile=${passwordFile}`];
 		args.push('-E', 'UTF8', '--locale=C.UTF-8', '--data-checksums', ...(throwaway ? ['--no-sync'] : []));
-		await must('The database could not be made', ...asOwner(join(bin, 'initdb'), args, owner), { cwd: '/' });
+		await must('The database could not be made', ...asOwner(join(bin, 'initdb'), args, owner), HERE);
 	} finally {
 		rmSync(passwordFile, { force: true });
 	}
@@ -214,9 +217,9 @@ export async function startCluster(cluster, { throwaway = false } = {}) {
 		const options = (throwaway ? THROWAWAY : DURABLE).map((setting) => `-c ${setting}`).join(' ');
 		const args = ['start', '-D', folder, '-l', log, '-w', '-t', '120', '-s', '-o'];
 		args.push(`-h 127.0.0.1 -p ${cluster.port} -k '' ${options}`);
-		const started = await run(...asOwner(join(bin, 'pg_ctl'), args, owner), { cwd: '/' });
+		const started = await run(...asOwner(join(bin, 'pg_ctl'), args, owner), HERE);
 		const server = runningServer(cluster);
-		if (started.code === 0 && server) return server.identity;
+		if (server?.ready) return server.identity;
 		// The port may have been taken meanwhile, and a killed server's last children may still be ending.
 		if (attempt < 4) {
 			await sleep(500);
@@ -249,7 +252,7 @@ export async function stopCluster({ folder, bin, owner }) {
 	const server = runningServer({ folder });
 	if (!server) return true;
 	const args = ['stop', '-D', folder, '-m', 'fast', '-w', '-t', '60', '-s'];
-	const stopped = await run(...asOwner(join(bin, 'pg_ctl'), args, owner), { cwd: '/' });
+	const stopped = await run(...asOwner(join(bin, 'pg_ctl'), args, owner), HERE);
 	if (stopped.code === 0 || !isAlive(server.identity)) return true;
 	// SIGQUIT is PostgreSQL's immediate shutdown: it recovers from its log at the next start.
 	return endProcess(server.identity, { signal: 'SIGQUIT', seconds: 10 });
@@ -264,7 +267,7 @@ export async function ensureDatabase({ bin, port, password }, name) {
 	const env = { ...process.env, PGPASSWORD: password, PGCONNECT_TIMEOUT: '30' };
 	const server = ['-h', '127.0.0.1', '-p', String(port), '-U', 'planish'];
 	const query = ['-d', 'postgres', '-XAtc', `select 1 from pg_database where datname = '${name}'`];
-	const found = await must('The database does not answer', join(bin, 'psql'), [...server, ...query], { env });
+	const found = await must('The database does not answer', join(bin, 'psql'), [...server, ...query], { ...HERE, env });
 	if (found.stdout.trim() === '1') return;
-	await must(`The database ${name} could not be made`, join(bin, 'createdb'), [...server, name], { env });
+	await must(`The database ${name} could not be made`, join(bin, 'createdb'), [...server, name], { ...HERE, env });
 }

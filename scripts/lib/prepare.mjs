@@ -25,11 +25,10 @@ export async function claim(settings) {
 	}
 	const url = String(lock.heldBy.url);
 	note(`Planish is running already with this data folder (process ${lock.heldBy.pid}).`);
-	if (!(await untilHealthy(url, 3))) {
+	while (!(await untilHealthy(url, 3))) {
+		// It stopped, or was stopped, meanwhile: then this one takes its place.
+		if (readHolder(path)?.pid !== lock.heldBy.pid) return claim(settings);
 		note('It is not serving yet; waiting ...');
-		for (let tries = 0; tries < 300 && readHolder(path)?.pid === lock.heldBy.pid; tries++) {
-			if (await untilHealthy(url, 1)) break;
-		}
 	}
 	say(`Planish: ${url}`);
 	return null;

@@ -96,14 +96,15 @@ const children = new Set();
  * Runs a program to its end. It gets its own process group, so that Ctrl-C reaches it only through us.
  * @param {string} command
  * @param {string[]} args
- * @param {{ cwd?: string, env?: NodeJS.ProcessEnv, log?: string, show?: boolean | 'stderr' }} [options] log: a file for the
- *   whole output; show: pass the output on as it comes (its standard output to our standard error if 'stderr')
+ * @param {{ cwd?: string, env?: NodeJS.ProcessEnv, log?: string, show?: boolean | 'stderr', finish?: boolean }} [options]
+ *   log: a file for the whole output; show: pass the output on as it comes (its standard output to our standard error if
+ *   'stderr'); finish: endChildren() lets it finish
  * @returns {Promise<{ code: number, output: string, stdout: string }>} code is 128 + n after a signal
  */
-export async function run(command, args, { cwd, env = process.env, log, show } = {}) {
+export async function run(command, args, { cwd, env = process.env, log, show, finish = false } = {}) {
 	const child = spawn(command, args, { cwd, env, detached: true, stdio: ['ignore', 'pipe', 'pipe'] });
 	const identity = child.pid ? identify(child.pid) : null;
-	if (identity) children.add(identity);
+	if (identity && !finish) children.add(identity);
 	const file = log ? createWriteStream(log) : null;
 	let output = '';
 	let stdout = '';
