@@ -8,7 +8,7 @@ let drag: Float64Array;
 beforeAll(() => {
 	pod = podSurface();
 	drag = sampleMap('drag', pod);
-});
+}, 60_000);
 
 /** Mean of a map over the vertices for which a condition holds. */
 const mean = (values: Float64Array, holds: (x: number, y: number, z: number) => boolean) => {
@@ -24,9 +24,9 @@ const mean = (values: Float64Array, holds: (x: number, y: number, z: number) => 
 
 describe('the invented maps', () => {
 	it('says that drag rises outward at the nose’s shoulder and falls at the tail’s', () => {
-		expect(mean(drag, (x, _, z) => x > -980 && x < -880 && z > 180)).toBeGreaterThan(2500);
-		expect(mean(drag, (x, _, z) => x > 500 && x < 620 && z > 220)).toBeLessThan(-2500);
-		expect(mean(drag, (x, _, z) => x > 900 && x < 960 && z > 200)).toBeGreaterThan(2500);
+		expect(mean(drag, (x, _, z) => x > -980 && x < -880 && z > 180)).toBeGreaterThan(1000);
+		expect(mean(drag, (x, _, z) => x > 500 && x < 620 && z > 220)).toBeLessThan(-1000);
+		expect(mean(drag, (x, _, z) => x > 900 && x < 960 && z > 200)).toBeGreaterThan(1000);
 	});
 
 	it('is noisy from vertex to vertex, the same every time', () => {
@@ -37,8 +37,8 @@ describe('the invented maps', () => {
 		});
 		const middle = flat.reduce((sum, value) => sum + value, 0) / flat.length;
 		const deviation = Math.sqrt(flat.reduce((sum, value) => sum + (value - middle) ** 2, 0) / flat.length);
-		expect(deviation).toBeGreaterThan(40);
-		expect(deviation).toBeLessThan(400);
+		expect(deviation).toBeGreaterThan(15);
+		expect(deviation).toBeLessThan(150);
 	});
 
 	it('promises less where the surface has already followed it', () => {
@@ -49,7 +49,7 @@ describe('the invented maps', () => {
 		const after = density('drag', [at[0], at[1], at[2] - lift - 0.004], up);
 		expect(before).toBeGreaterThan(0);
 		expect(after).toBeGreaterThan(0);
-		expect(after).toBeLessThan(0.95 * before);
+		expect(after).toBeLessThan(0.9 * before);
 	});
 
 	it('writes a CSV that names its vertices exactly and says that it is invented', () => {

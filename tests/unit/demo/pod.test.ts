@@ -4,7 +4,7 @@ import { podSurface, type DemoSurface } from '$lib/server/demo/pod-mesh';
 let pod: DemoSurface;
 beforeAll(() => {
 	pod = podSurface();
-});
+}, 60_000);
 
 const point = (v: number) => [pod.positions[3 * v], pod.positions[3 * v + 1], pod.positions[3 * v + 2]] as const;
 type Point = readonly [number, number, number];

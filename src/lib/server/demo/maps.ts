@@ -33,19 +33,19 @@ export function density(
 	// Displacement since the baseline; the feet and the floor do not move.
 	const moved = z > 0.02 ? podDistance(x, y, z) : 0;
 	if (objective === 'drag') {
-		const nose = 5600 * bell(x, -0.93, 0.17) * (0.35 + 0.65 * up) - 900 * bell(x, -1.12, 0.06) * fore;
-		const suction = -1900 * bell(x, -0.5, 0.17) * (0.3 * side + up);
-		const tailShoulder = -4700 * bell(x, 0.56, 0.17) * (0.45 * side + up) * (0.8 + 0.2 * Math.cos(5 * y));
-		const tailRim = 5900 * bell(x, 0.93, 0.1) * (0.6 * side + up + 0.25 * aft) * (1 - 0.25 * bell(y, 0, 0.12));
-		const base = -1500 * smootherstep(0.6, 0.95, aft);
-		const under = 450 * down * bell(x, -0.7, 0.3) - 350 * down * bell(x, 0.8, 0.3);
-		const stiffness = 2.6e5 * (0.4 + bell(x, 0.8, 0.35) + 0.7 * bell(x, -0.8, 0.3));
+		const nose = 2400 * bell(x, -0.93, 0.17) * (0.35 + 0.65 * up) - 400 * bell(x, -1.12, 0.06) * fore;
+		const suction = -820 * bell(x, -0.5, 0.17) * (0.3 * side + up);
+		const tailShoulder = -2000 * bell(x, 0.56, 0.17) * (0.45 * side + up) * (0.8 + 0.2 * Math.cos(5 * y));
+		const tailRim = 2500 * bell(x, 0.93, 0.1) * (0.6 * side + up + 0.25 * aft) * (1 - 0.25 * bell(y, 0, 0.12));
+		const base = -640 * smootherstep(0.6, 0.95, aft);
+		const under = 190 * down * bell(x, -0.7, 0.3) - 150 * down * bell(x, 0.8, 0.3);
+		const stiffness = 1.1e5 * (0.4 + bell(x, 0.8, 0.35) + 0.7 * bell(x, -0.8, 0.3));
 		return nose + suction + tailShoulder + tailRim + base + under + stiffness * moved;
 	}
-	const crown = 2100 * bell(x, -0.25, 0.45) * up;
-	const tail = -2600 * bell(x, 0.85, 0.22) * up;
-	const nose = -800 * bell(x, -1, 0.12) * up + 500 * down * bell(x, -0.95, 0.2);
-	return crown + tail + nose + 0.9e5 * (0.3 + bell(x, 0.8, 0.4)) * moved;
+	const crown = 900 * bell(x, -0.25, 0.45) * up;
+	const tail = -1100 * bell(x, 0.85, 0.22) * up;
+	const nose = -340 * bell(x, -1, 0.12) * up + 210 * down * bell(x, -0.95, 0.2);
+	return crown + tail + nose + 0.4e5 * (0.3 + bell(x, 0.8, 0.4)) * moved;
 }
 
 /** Uniform in [-1, 1), the same for the same position: mixes the bits of the three floats (Murmur3's finaliser). */
@@ -61,7 +61,7 @@ function noise(bits: Uint32Array, seed: number): number {
 
 /** What a mesh does to an adjoint map, as shares of the local value and of the map's scale; one vertex in `SPIKE` stands out. */
 const NOISE_LOCAL = 0.16;
-const NOISE_FLOOR: Record<DemoObjective, number> = { drag: 130, lift: 60 };
+const NOISE_FLOOR: Record<DemoObjective, number> = { drag: 55, lift: 25 };
 const SPIKE_ABOVE = 0.992;
 
 /** The map at each vertex of a surface: N values in N per m per m^2. The surface is borrowed. */

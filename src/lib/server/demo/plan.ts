@@ -109,9 +109,9 @@ const moves: DemoMove[] = [
 	{
 		parent: 1,
 		name: 'Tail and shoulder',
-		note: 'Same step, the nose’s shoulder with it.',
+		note: 'A shorter step, the nose’s shoulder with it.',
 		boxes: ['tail', 'shoulder'],
-		step: 0.004,
+		step: 0.003,
 		smoothing: 0.025,
 		constraints: [{ kind: 'volume', bound: 'hold' }]
 	}

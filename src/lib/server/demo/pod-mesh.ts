@@ -19,6 +19,8 @@ const HALF_EXTENT: readonly [number, number, number] = [1.1, 0.45, 0.17];
 const RELAXATIONS = 100;
 /** Under 1/2, or the evening out of lengths overshoots and zigzags. */
 const RELAXATION = 0.35;
+/** Between projections the points drift off the surface by far less than a cell. */
+const PROJECT_EVERY = 4;
 
 /** Feet on the floor's grid: first and last cell line in x; in y counted from the mirror plane; cells that the flank takes. */
 const FEET = [
@@ -162,7 +164,8 @@ function layOut(grid: Grid, feet: Float64Array): Float64Array {
 			}
 			for (let c = 0; c < 3; c++) next[3 * v + c] = p[3 * v + c] + (RELAXATION * sum[c]) / weights;
 			if (grid.mirror[v] === v) next[3 * v + 1] = 0;
-			project(next, 3 * v, normal, n + 1 < RELAXATIONS ? 1 : 8);
+			const last = n + 1 === RELAXATIONS;
+			if (last || n % PROJECT_EVERY === 0) project(next, 3 * v, normal, last ? 8 : 1);
 			if (grid.mirror[v] === v) next[3 * v + 1] = 0;
 			const m = grid.mirror[v];
 			next[3 * m] = next[3 * v];
