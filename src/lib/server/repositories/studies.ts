@@ -52,10 +52,14 @@ export async function findStudySummary(userId: string, id: string, tx?: Tx): Pro
 	return rows[0] ?? null;
 }
 
+export const lockStudyIfAny = (id: string, tx: Tx): Promise<StudyRow | null> => {
+	database();
+	return StudyModel.findByPk(id, { transaction: tx, lock: tx.LOCK.UPDATE });
+};
+
 /** Locks the study's row: what is numbered or unique in it is decided by one at a time. */
-export async function lockStudy(id: string, tx: Tx): Promise<StudyRow> {
-	return StudyModel.findByPk(id, { transaction: tx, lock: tx.LOCK.UPDATE, rejectOnEmpty: true });
-}
+export const lockStudy = (id: string, tx: Tx): Promise<StudyRow> =>
+	StudyModel.findByPk(id, { transaction: tx, lock: tx.LOCK.UPDATE, rejectOnEmpty: true });
 
 export interface StudyValues {
 	name: string;

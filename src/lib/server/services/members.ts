@@ -1,5 +1,5 @@
 /** Who takes part in a study. */
-import type { Member, Role } from '$lib/api/schemas';
+import { id as uuid, type Member, type Role } from '$lib/api/schemas';
 import type { StudyAccess } from '../auth/caller';
 import { AppError } from '../errors';
 import { recordEvent } from '../repositories/audit';
@@ -59,5 +59,16 @@ export async function removeMember(access: StudyAccess, userId: string): Promise
 		await repository.touchStudy(study, tx);
 		await recordEvent(tx, access, { action: 'member.removed', studyId, subjectId: userId });
 		return members(studyId, tx);
+	});
+}
+
+/** For the command line: puts a person into a study that may have nobody left who could. */
+export async function placeMember(studyId: string, userId: string, role: Role): Promise<void> {
+	await inTransaction(async (tx) => {
+		const study = uuid.safeParse(studyId).success ? await repository.lockStudyIfAny(studyId, tx) : null;
+		if (!study) throw new AppError('not-found', `There is no study ${studyId}.`);
+		if (role !== 'engineer') await refuseLosingLastEngineer(studyId, userId, tx);
+		await repository.putMember(studyId, userId, role, tx);
+		await recordEvent(tx, null, { action: 'member.put', studyId, subjectId: userId, detail: { role } });
 	});
 }

@@ -1,5 +1,5 @@
 /** API tokens: a program acts as the person who made its token, in all their studies or in one. */
-import type { Token } from '$lib/api/schemas';
+import { id as uuid, type Token } from '$lib/api/schemas';
 import { newToken } from '../auth/bearer';
 import type { Actor, Caller } from '../auth/caller';
 import { AppError } from '../errors';
@@ -56,7 +56,7 @@ export async function createToken(
 	{ name, studyId = null }: { name: string; studyId?: string | null }
 ): Promise<Token & { token: string }> {
 	refuseBoundToken(caller);
-	if (studyId && !(await findStudyAccess('study', studyId, caller))) {
+	if (studyId && !(uuid.safeParse(studyId).success && (await findStudyAccess('study', studyId, caller)))) {
 		throw new AppError('invalid', 'There is no such study, or you have no part in it.', {
 			errors: [{ pointer: '/studyId', detail: 'not a study of yours' }]
 		});

@@ -61,3 +61,22 @@ export async function updateUser(
 		return userAnswer(row);
 	});
 }
+
+export interface PersonToPut {
+	email: string;
+	name?: string;
+	isAdmin?: boolean;
+	password?: string;
+	/** For a person who is new, when no password is given. */
+	firstPassword: string;
+}
+
+/** For the command line: makes the person, or changes what is given of one who is here and lets them sign in again. */
+export async function putPerson(person: PersonToPut): Promise<{ created: boolean; user: wire.User }> {
+	const { email, name, isAdmin, password, firstPassword } = person;
+	const present = await repository.findUserByEmail(email);
+	if (present)
+		return { created: false, user: await updateUser(null, present.id, { name, isAdmin, password, active: true }) };
+	const values = { email, name: name ?? email, password: password ?? firstPassword, isAdmin: isAdmin ?? false };
+	return { created: true, user: await createUser(null, values) };
+}
