@@ -300,7 +300,14 @@ export const recipe = z.object({
 	constraints: z.array(constraintRequest),
 	boxIds: z.array(id),
 	boxes: z.array(box).describe('as they were when the move was made'),
-	mapIds: z.array(id)
+	mapIds: z.array(id),
+	mapWeights: z
+		.record(id, finite)
+		.describe('share of each map in the gradient of its objective: operating points by weight, sum 1'),
+	senses: z.record(id, sense).describe('of the objectives when the move was made'),
+	parentValues: z
+		.record(id, finite)
+		.describe('the parent’s results of constrained objectives, which an absolute bound is measured against')
 });
 export type Recipe = z.infer<typeof recipe>;
 
@@ -451,6 +458,8 @@ export type Job = z.infer<typeof job>;
 
 export const shapeImported = z.object({ shapeId: id });
 export const mapImported = mapReport.extend({ mapId: id });
+export type MapImported = z.infer<typeof mapImported>;
 export const moveCommitted = moveAnswer.extend({ shapeId: id, moveId: id });
+export type MoveCommitted = z.infer<typeof moveCommitted>;
 
 export const health = z.object({ status: z.literal('ok') });

@@ -1,0 +1,135 @@
+/** Previews a move, or commits it as a new shape. */
+import { randomUUID } from 'node:crypto';
+import { surfaceMeasures, toMetres, type MoveSolution } from '$lib/morph';
+import type { Check, MoveAnswer, MoveCommitted, Recipe, RecipeRequest } from '$lib/api/schemas';
+import { POSITION_CHUNK_BYTES, putContent } from '../../content/store';
+import { AppError } from '../../errors';
+import { recordEvent } from '../../repositories/audit';
+import { findShape, insertMove, insertShape, takeShapeNumber, type ShapeRow } from '../../repositories/shapes';
+import { MeshCache } from '../../services/mesh-cache';
+import { checkMoved, moveAnswer, solveMove, storedPositions } from '../../services/move-engine';
+import { completeRecipe, type CompleteRecipe } from '../../services/recipe';
+import type { Control } from '../control';
+import { measuresOf } from './import-shape';
+import { actorOf, storeAndEnd, type JobTask } from './job-task';
+
+interface Payload extends CompleteRecipe {
+	shapeId: string;
+	name?: string;
+	note?: string;
+}
+
+async function requireShape(id: string): Promise<ShapeRow> {
+	const shape = await findShape(id);
+	if (!shape) throw new AppError('not-found', 'There is no such shape.');
+	return shape;
+}
+
+/** @throws AppError, MorphError, Stopped */
+export async function previewTask(
+	shapeId: string,
+	request: RecipeRequest,
+	cache: MeshCache,
+	control: Control
+): Promise<MoveAnswer> {
+	const shape = await requireShape(shapeId);
+	const complete = await completeRecipe(shape, request);
+	const moved = await solveMove(shape, complete.recipe, cache, control);
+	control.stage('Checking the moved surface', 0.9, 1);
+	return moveAnswer(complete, moved, checkMoved(moved));
+}
+
+/** @throws AppError check-failed and others, MorphError, Stopped, NotOurs */
+export async function commitTask(task: JobTask): Promise<void> {
+	const { job, control } = task;
+	const { shapeId: parentId, name, note, recipe, objectives } = job.payload as unknown as Payload;
+	const parent = await requireShape(parentId);
+	const moved = await solveMove(parent, recipe, new MeshCache(0), control);
+	const checkpoint = control.stage('Checking the moved surface', 0.8, 0.9);
+	const { positions } = storedPositions(moved);
+	const answer = moveAnswer({ recipe, objectives }, moved, checkMoved(moved, positions));
+	refuseBroken(answer.checks);
+	const { triangles } = moved.parent.mesh;
+	const measures = surfaceMeasures(toMetres(positions, moved.parent.metresPerUnit), triangles, { checkpoint });
+	const progress = control.stage('Storing the moved shape', 0.9, 1);
+	await storeAndEnd(
+		task,
+		'The moved shape is stored',
+		async (tx) => {
+			const stored = await putContent(positions, tx, { chunkBytes: POSITION_CHUNK_BYTES });
+			progress(0.8);
+			const lattices = await putContent(together(moved.solution), tx);
+			return { positionsId: stored.id, latticesId: lattices.id };
+		},
+		async (tx, { positionsId, latticesId }): Promise<MoveCommitted> => {
+			const shapeId = randomUUID();
+			const moveId = randomUUID();
+			const number = await takeShapeNumber(job.studyId, tx);
+			await insertShape(
+				{
+					id: shapeId,
+					studyId: job.studyId,
+					number,
+					parentId,
+					name: name ?? defaultName(recipe),
+					note: note ?? '',
+					topologyId: parent.topologyId,
+					positionsId,
+					originalId: null,
+					filename: null,
+					measures: measuresOf(measures),
+					createdBy: job.createdBy
+				},
+				tx
+			);
+			const { lattices: _inContent, ...kept } = answer;
+			const row = { id: moveId, studyId: job.studyId, parentShapeId: parentId, shapeId, recipe, answer: kept };
+			await insertMove({ ...row, latticesId, createdBy: job.createdBy }, tx);
+			await recordEvent(tx, actorOf(job), {
+				studyId: job.studyId,
+				action: 'move.committed',
+				subjectId: shapeId,
+				detail: { moveId, parentId, number, step: recipe.step, smoothing: recipe.smoothing }
+			});
+			return { ...answer, shapeId, moveId };
+		}
+	);
+}
+
+/** All boxes' control point displacements, one after the other. */
+function together({ lattices }: MoveSolution): Float64Array {
+	const whole = new Float64Array(lattices.reduce((sum, lattice) => sum + lattice.length, 0));
+	let at = 0;
+	for (const lattice of lattices) {
+		whole.set(lattice, at);
+		at += lattice.length;
+	}
+	return whole;
+}
+
+const BROKEN: Record<string, (check: Check) => string> = {
+	flipped: ({ value, triangle }) =>
+		`${value} triangle${value === 1 ? '' : 's'} would turn over, the worst of them triangle ${triangle}`,
+	minAngle: ({ value, limit, triangle }) =>
+		`the smallest angle would be ${value.toFixed(2)}°, below ${limit}°, in triangle ${triangle}`
+};
+
+function refuseBroken(checks: MoveAnswer['checks']): void {
+	const broken = Object.entries(checks).filter(([, check]) => check.hard && !check.ok);
+	if (broken.length === 0) return;
+	const words = broken.map(
+		([name, check]) => BROKEN[name]?.(check) ?? `${name} is ${check.value} ${check.unit}, limit ${check.limit}`
+	);
+	throw new AppError(
+		'check-failed',
+		`The move breaks the check ${broken.map(([name]) => name).join(', ')}: ${words.join('; ')}.`,
+		{
+			mend: 'Take a shorter step or a longer smoothing length, or fewer control points.'
+		}
+	);
+}
+
+function defaultName({ step, boxes }: Recipe): string {
+	const text = `step ${Number((1000 * step).toPrecision(4))} mm in ${boxes.map((box) => box.name).join(', ')}`;
+	return text.length > 120 ? `${text.slice(0, 119)}…` : text;
+}
