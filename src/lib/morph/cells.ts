@@ -23,32 +23,68 @@ export interface CellGrid {
 	keys: Uint32Array;
 }
 
-const CELL_STEPS = [1, 2, 4, 8, 12, 16, 24, 32, 48, 64, 96, 128];
+/** Vertices taken together by the moment kernel. */
+const BLOCK = 4;
+const CELL_STEPS = [1, 2, 4, 6, 8, 12, 16, 24, 32, 48, 64, 96, 128];
 const ORDERS = [5, 7, 9];
-/** Bound of the truncation, relative to polynomials of largest value 1: for the metric, and for moves and gradients. */
-export const METRIC_TOLERANCE = 1e-9;
-export const FIELD_TOLERANCE = 1e-11;
+/**
+ * Bound of the truncation, relative to polynomials of largest value 1: for the metric, and for moves and gradients. The
+ * bound adds the largest coefficients of all polynomials and cells; what is really lost is some thousand times less
+ * (tests/unit/morph/cells.test.ts).
+ */
+export const METRIC_TOLERANCE = 3e-7;
+export const FIELD_TOLERANCE = 5e-9;
 
 /**
- * Smallest cell grid that meets the tolerances for lattice degrees (by axis) and the metric's doubled degrees, or null
- * when none does.
+ * The cheapest cell grid that meets the tolerances for lattice degrees (by axis) and the metric's doubled degrees, or
+ * null when none does. Costs are counted in multiply-adds.
  */
 export function chooseCells(
-	degrees: readonly [number, number, number]
+	degrees: readonly [number, number, number],
+	vertexCount: number
 ): { cells: [number, number, number]; order: number } | null {
+	const kept = new Map<string, Float64Array>();
+	const magnitudes = (degree: number, cells: number) => {
+		const key = `${degree}/${cells}`;
+		let found = kept.get(key);
+		if (!found) {
+			found = expandBernstein(degree, cells, 0).magnitudes;
+			kept.set(key, found);
+		}
+		return found;
+	};
+	const meets = (factor: number, cells: number[], order: number, tolerance: number) => {
+		const [u, v, w] = degrees.map((d, k) => magnitudes(factor * d, cells[k]));
+		return truncationBound(u, v, w, order) <= tolerance;
+	};
+	const top = Math.max(...degrees);
+	let best: { cells: [number, number, number]; order: number } | null = null;
+	let bestCost = Infinity;
 	for (const order of ORDERS) {
 		for (const step of CELL_STEPS) {
-			const top = Math.max(...degrees);
 			// Finer along the axis of higher degree.
 			const cells = degrees.map((d) => Math.max(1, Math.ceil((step * d) / top))) as [number, number, number];
-			const single = degrees.map((d, k) => expandBernstein(d, cells[k], 0).magnitudes);
-			if (truncationBound(single[0], single[1], single[2], order) > FIELD_TOLERANCE) continue;
-			const double = degrees.map((d, k) => expandBernstein(2 * d, cells[k], 0).magnitudes);
-			if (truncationBound(double[0], double[1], double[2], order) > METRIC_TOLERANCE) continue;
-			return { cells, order };
+			if (!meets(1, cells, order, FIELD_TOLERANCE) || !meets(2, cells, order, METRIC_TOLERANCE)) continue;
+			const terms = ((order + 1) * (order + 2) * (order + 3)) / 6;
+			const pairs = ((order + 1) * (order + 2)) / 2;
+			const [fu, fv, fw] = degrees.map((d) => 2 * d + 1);
+			// A surface meets about three times the cells of a plane section.
+			const columns = Math.min(vertexCount, cells[0] * cells[1]);
+			const occupied = Math.min(vertexCount, 3 * Math.max(columns, cells[0] * cells[2], cells[1] * cells[2]));
+			const cost =
+				6 *
+				(vertexCount * terms +
+					occupied * terms * fw +
+					columns * pairs * fv * fw +
+					cells[0] * (order + 1) * fu * fv * fw);
+			if (cost < bestCost) {
+				bestCost = cost;
+				best = { cells, order };
+			}
+			break;
 		}
 	}
-	return null;
+	return best;
 }
 
 /** Sorts vertices into cells. uvw is n x 3 in [0, 1], borrowed. */
@@ -104,6 +140,65 @@ export function gridExpansions(
 	return [of(0), of(1), of(2)];
 }
 
+/**
+ * Values of the kept products T_a(x) T_b(y) T_c(z), c fastest, at one vertex, for order 5: the loops of
+ * chebyshevProducts written out, which halves their time.
+ */
+function fifthOrderProducts(x: number, y: number, z: number, out: Float64Array): void {
+	const x2 = 2 * x;
+	const y2 = 2 * y;
+	const z2 = 2 * z;
+	const tz2 = z2 * z - 1;
+	const tz3 = z2 * tz2 - z;
+	const tz4 = z2 * tz3 - tz2;
+	const tz5 = z2 * tz4 - tz3;
+	const ty2 = y2 * y - 1;
+	const ty3 = y2 * ty2 - y;
+	const ty4 = y2 * ty3 - ty2;
+	const ty5 = y2 * ty4 - ty3;
+	let tx = 1;
+	let next = x;
+	let l = 0;
+	for (let left = 5; left >= 0; left--) {
+		out[l++] = tx;
+		if (left > 0) out[l++] = tx * z;
+		if (left > 1) out[l++] = tx * tz2;
+		if (left > 2) out[l++] = tx * tz3;
+		if (left > 3) out[l++] = tx * tz4;
+		if (left > 4) out[l++] = tx * tz5;
+		if (left > 0) {
+			const f = tx * y;
+			out[l++] = f;
+			if (left > 1) out[l++] = f * z;
+			if (left > 2) out[l++] = f * tz2;
+			if (left > 3) out[l++] = f * tz3;
+			if (left > 4) out[l++] = f * tz4;
+		}
+		if (left > 1) {
+			const f = tx * ty2;
+			out[l++] = f;
+			if (left > 2) out[l++] = f * z;
+			if (left > 3) out[l++] = f * tz2;
+			if (left > 4) out[l++] = f * tz3;
+		}
+		if (left > 2) {
+			const f = tx * ty3;
+			out[l++] = f;
+			if (left > 3) out[l++] = f * z;
+			if (left > 4) out[l++] = f * tz2;
+		}
+		if (left > 3) {
+			const f = tx * ty4;
+			out[l++] = f;
+			if (left > 4) out[l++] = f * z;
+		}
+		if (left > 4) out[l++] = tx * ty5;
+		const after = left === 5 ? x2 * x - 1 : x2 * next - tx;
+		tx = next;
+		next = after;
+	}
+}
+
 /** Values of the kept products T_a(x) T_b(y) T_c(z), c fastest, at one vertex. */
 function chebyshevProducts(
 	order: number,
@@ -115,6 +210,10 @@ function chebyshevProducts(
 	tz: Float64Array,
 	out: Float64Array
 ): void {
+	if (order === 5) {
+		fifthOrderProducts(x, y, z, out);
+		return;
+	}
 	tx[0] = ty[0] = tz[0] = 1;
 	tx[1] = x;
 	ty[1] = y;
@@ -134,11 +233,134 @@ function chebyshevProducts(
 	}
 }
 
+/** Scratch of one vertex block: products of four vertices and the three recurrences. */
+function makeScratch(order: number, terms: number) {
+	return {
+		phi: Array.from({ length: BLOCK }, () => new Float64Array(terms)),
+		tx: new Float64Array(order + 2),
+		ty: new Float64Array(order + 2),
+		tz: new Float64Array(order + 2)
+	};
+}
+
+/**
+ * target[to + i * length + k] += sum over t of coefficients[at + t * count + i] * source[from + t * stride + k], three
+ * terms at a time, so that the target is read and written less often.
+ */
+function spread(
+	target: Float64Array,
+	to: number,
+	coefficients: Float64Array,
+	at: number,
+	count: number,
+	source: Float64Array,
+	from: number,
+	stride: number,
+	terms: number,
+	length: number
+): void {
+	for (let t = 0; t < terms; t += 3) {
+		// Absent terms read the first one with the factor 0.
+		const t1 = t + 1 < terms ? t + 1 : t;
+		const t2 = t + 2 < terms ? t + 2 : t;
+		const on1 = t + 1 < terms ? 1 : 0;
+		const on2 = t + 2 < terms ? 1 : 0;
+		const s0 = from + t * stride;
+		const s1 = from + t1 * stride;
+		const s2 = from + t2 * stride;
+		for (let i = 0; i < count; i++) {
+			const f0 = coefficients[at + t * count + i];
+			const f1 = coefficients[at + t1 * count + i] * on1;
+			const f2 = coefficients[at + t2 * count + i] * on2;
+			const base = to + i * length;
+			for (let k = 0; k < length; k++) {
+				target[base + k] += f0 * source[s0 + k] + f1 * source[s1 + k] + f2 * source[s2 + k];
+			}
+		}
+	}
+}
+
+/** Adds four vertices' products, weighted, to three sums per term. Weights of absent vertices are 0. */
+function gatherBlock(
+	cell: Float64Array,
+	base: number,
+	terms: number,
+	phi: Float64Array[],
+	weights: Float64Array,
+	i0: number,
+	i1: number,
+	i2: number,
+	i3: number,
+	present: number
+): void {
+	const on1 = present > 1 ? 1 : 0;
+	const on2 = present > 2 ? 1 : 0;
+	const on3 = present > 3 ? 1 : 0;
+	const a0 = weights[i0];
+	const b0 = weights[i0 + 1];
+	const d0 = weights[i0 + 2];
+	const a1 = weights[i1] * on1;
+	const b1 = weights[i1 + 1] * on1;
+	const d1 = weights[i1 + 2] * on1;
+	const a2 = weights[i2] * on2;
+	const b2 = weights[i2 + 1] * on2;
+	const d2 = weights[i2 + 2] * on2;
+	const a3 = weights[i3] * on3;
+	const b3 = weights[i3 + 1] * on3;
+	const d3 = weights[i3 + 2] * on3;
+	const phi0 = phi[0];
+	const phi1 = phi[1];
+	const phi2 = phi[2];
+	const phi3 = phi[3];
+	for (let l = 0, m = base; l < terms; l++, m += 3) {
+		const p0 = phi0[l];
+		const p1 = phi1[l];
+		const p2 = phi2[l];
+		const p3 = phi3[l];
+		cell[m] += a0 * p0 + a1 * p1 + a2 * p2 + a3 * p3;
+		cell[m + 1] += b0 * p0 + b1 * p1 + b2 * p2 + b3 * p3;
+		cell[m + 2] += d0 * p0 + d1 * p1 + d2 * p2 + d3 * p3;
+	}
+}
+
+/** One group of three: cell sums (terms x 3) to the column's polynomials in w (pairs x functions_w x 3). */
+function spreadCell(
+	column: Float64Array,
+	columnStart: number,
+	columnStride: number,
+	cell: Float64Array,
+	cellStart: number,
+	coefficients: Float64Array,
+	coefficientStart: number,
+	functions: number,
+	size: number
+): void {
+	let to = columnStart;
+	let m = cellStart;
+	for (let a = 0; a < size; a++) {
+		for (let b = 0; b < size - a; b++, to += columnStride) {
+			const count = size - a - b;
+			for (let c = 0; c < count; c++, m += 3) {
+				const m0 = cell[m];
+				const m1 = cell[m + 1];
+				const m2 = cell[m + 2];
+				const from = coefficientStart + c * functions;
+				for (let k = 0, at = to; k < functions; k++, at += 3) {
+					const f = coefficients[from + k];
+					column[at] += m0 * f;
+					column[at + 1] += m1 * f;
+					column[at + 2] += m2 * f;
+				}
+			}
+		}
+	}
+}
+
 /**
  * Moments: for each of `sets` weights per vertex, sum over vertices of weight * A_i(u) B_j(v) C_k(w).
  * @param weights n x sets, in the vertices' own order, borrowed; sets a multiple of 3
  * @param expansions the polynomials along each axis
- * @returns sets x functions_u x functions_v x functions_w
+ * @returns sets/3 x functions_u x functions_v x functions_w x 3: the weights in groups of three, innermost
  */
 export function cellMoments(
 	grid: CellGrid,
@@ -155,96 +377,128 @@ export function cellMoments(
 	const nw = ew.functions;
 	const size = order + 1;
 	const pairs = (size * (size + 1)) / 2;
-	const out = new Float64Array(sets * nu * nv * nw);
+	const groups = sets / 3;
+	const row = 3 * nw;
+	const plane = nv * row;
+	const out = new Float64Array(groups * nu * plane);
 	const cell = new Float64Array(terms * sets);
-	const column = new Float64Array(pairs * sets * nw);
-	const slab = new Float64Array(size * sets * nv * nw);
-	const phi = new Float64Array(terms);
-	const tx = new Float64Array(size + 1);
-	const ty = new Float64Array(size + 1);
-	const tz = new Float64Array(size + 1);
-
-	const closeColumn = (b0: number) => {
-		for (let a = 0, ab = 0; a < size; a++) {
-			for (let b = 0; b < size - a; b++, ab++) {
-				const coefficient = (b0 * size + b) * nv;
-				for (let s = 0; s < sets; s++) {
-					const from = (ab * sets + s) * nw;
-					for (let j = 0; j < nv; j++) {
-						const f = ev.coefficients[coefficient + j];
-						const to = ((a * sets + s) * nv + j) * nw;
-						for (let k = 0; k < nw; k++) slab[to + k] += f * column[from + k];
-					}
-				}
+	const column = new Float64Array(pairs * groups * row);
+	const slab = new Float64Array(size * groups * plane);
+	const { phi, tx, ty, tz } = makeScratch(order, terms);
+	for (let o = 0; o < keys.length; o++) {
+		const key = keys[o];
+		const c0 = key % cw;
+		cell.fill(0);
+		const last = starts[o + 1];
+		for (let i = starts[o]; i < last; i += BLOCK) {
+			const here = Math.min(BLOCK, last - i);
+			for (let q = 0; q < here; q++) {
+				const at = 3 * (i + q);
+				chebyshevProducts(order, local[at], local[at + 1], local[at + 2], tx, ty, tz, phi[q]);
+			}
+			// Four vertices at a time, so that each sum is read and written once for four products.
+			const i0 = sets * sorted[i];
+			const i1 = here > 1 ? sets * sorted[i + 1] : i0;
+			const i2 = here > 2 ? sets * sorted[i + 2] : i0;
+			const i3 = here > 3 ? sets * sorted[i + 3] : i0;
+			for (let s = 0; s < sets; s += 3) {
+				gatherBlock(cell, s * terms, terms, phi, weights, i0 + s, i1 + s, i2 + s, i3 + s, here);
+			}
+		}
+		for (let g = 0; g < groups; g++) {
+			spreadCell(column, g * row, groups * row, cell, 3 * g * terms, ew.coefficients, c0 * size * nw, nw, size);
+		}
+		// Close the column, and the slab, when the next cell lies in another one.
+		const line = (key - c0) / cw;
+		const nextLine = o + 1 < keys.length ? Math.floor(keys[o + 1] / cw) : -1;
+		if (nextLine === line) continue;
+		const b0 = line % cv;
+		const a0 = (line - b0) / cv;
+		for (let a = 0, ab = 0; a < size; ab += size - a, a++) {
+			for (let g = 0; g < groups; g++) {
+				const to = (a * groups + g) * plane;
+				const from = (ab * groups + g) * row;
+				spread(slab, to, ev.coefficients, b0 * size * nv, nv, column, from, groups * row, size - a, row);
 			}
 		}
 		column.fill(0);
-	};
-	const closeSlab = (a0: number) => {
-		const plane = nv * nw;
-		for (let a = 0; a < size; a++) {
-			for (let s = 0; s < sets; s++) {
-				const from = (a * sets + s) * plane;
-				for (let i = 0; i < nu; i++) {
-					const f = eu.coefficients[(a0 * size + a) * nu + i];
-					const to = (s * nu + i) * plane;
-					for (let k = 0; k < plane; k++) out[to + k] += f * slab[from + k];
-				}
-			}
+		if (nextLine >= 0 && Math.floor(nextLine / cv) === a0) continue;
+		for (let g = 0; g < groups; g++) {
+			const stride = groups * plane;
+			spread(out, g * nu * plane, eu.coefficients, a0 * size * nu, nu, slab, g * plane, stride, size, plane);
 		}
 		slab.fill(0);
-	};
-
-	let columnKey = -1;
-	for (let o = 0; o < keys.length; o++) {
-		const c0 = keys[o] % cw;
-		const key = (keys[o] - c0) / cw;
-		if (key !== columnKey) {
-			if (columnKey >= 0) {
-				closeColumn(columnKey % cv);
-				if (Math.floor(key / cv) !== Math.floor(columnKey / cv)) {
-					closeSlab(Math.floor(columnKey / cv));
-					checkpoint?.(o / keys.length);
-				}
-			}
-			columnKey = key;
-		}
-		cell.fill(0);
-		for (let i = starts[o]; i < starts[o + 1]; i++) {
-			chebyshevProducts(order, local[3 * i], local[3 * i + 1], local[3 * i + 2], tx, ty, tz, phi);
-			const at = sets * sorted[i];
-			for (let s = 0; s < sets; s += 3) {
-				const w0 = weights[at + s];
-				const w1 = weights[at + s + 1];
-				const w2 = weights[at + s + 2];
-				const base = s * terms;
-				for (let l = 0, m = base; l < terms; l++, m += 3) {
-					const p = phi[l];
-					cell[m] += w0 * p;
-					cell[m + 1] += w1 * p;
-					cell[m + 2] += w2 * p;
-				}
-			}
-		}
-		for (let s = 0; s < sets; s++) {
-			const base = (s - (s % 3)) * terms + (s % 3);
-			for (let a = 0, ab = 0, l = 0; a < size; a++) {
-				for (let b = 0; b < size - a; b++, ab++) {
-					const to = (ab * sets + s) * nw;
-					for (let c = 0; c < size - a - b; c++, l++) {
-						const m = cell[base + 3 * l];
-						const from = (c0 * size + c) * nw;
-						for (let k = 0; k < nw; k++) column[to + k] += m * ew.coefficients[from + k];
-					}
-				}
-			}
-		}
-	}
-	if (columnKey >= 0) {
-		closeColumn(columnKey % cv);
-		closeSlab(Math.floor(columnKey / cv));
+		checkpoint?.((o + 1) / keys.length);
 	}
 	return out;
+}
+
+/** out[to + k] += sum over i of coefficients[at + i] source[i * length + from + k]: the transpose of spread. */
+function collect(
+	target: Float64Array,
+	to: number,
+	coefficients: Float64Array,
+	at: number,
+	count: number,
+	source: Float64Array,
+	from: number,
+	length: number
+): void {
+	for (let i = 0; i < count; i++) {
+		const f = coefficients[at + i];
+		const base = from + i * length;
+		for (let k = 0; k < length; k++) target[to + k] += f * source[base + k];
+	}
+}
+
+/** The transpose of spreadCell: the cell's terms x 3 from the column's polynomials in w. */
+function collectCell(
+	cell: Float64Array,
+	column: Float64Array,
+	columnStride: number,
+	coefficients: Float64Array,
+	coefficientStart: number,
+	functions: number,
+	size: number
+): void {
+	let base = 0;
+	let m = 0;
+	for (let a = 0; a < size; a++) {
+		for (let b = 0; b < size - a; b++, base += columnStride) {
+			const count = size - a - b;
+			for (let c = 0; c < count; c++, m += 3) {
+				const from = coefficientStart + c * functions;
+				let x = 0;
+				let y = 0;
+				let z = 0;
+				for (let k = 0, at = base; k < functions; k++, at += 3) {
+					const f = coefficients[from + k];
+					x += f * column[at];
+					y += f * column[at + 1];
+					z += f * column[at + 2];
+				}
+				cell[m] = x;
+				cell[m + 1] = y;
+				cell[m + 2] = z;
+			}
+		}
+	}
+}
+
+/** Sum over the terms of one vertex's products times the cell's coefficients. */
+function valueAt(out: Float64Array, at: number, phi: Float64Array, cell: Float64Array, terms: number): void {
+	let x = 0;
+	let y = 0;
+	let z = 0;
+	for (let l = 0, m = 0; l < terms; l++, m += 3) {
+		const p = phi[l];
+		x += p * cell[m];
+		y += p * cell[m + 1];
+		z += p * cell[m + 2];
+	}
+	out[at] = x;
+	out[at + 1] = y;
+	out[at + 2] = z;
 }
 
 /**
@@ -266,82 +520,39 @@ export function cellValues(
 	const size = order + 1;
 	const pairs = (size * (size + 1)) / 2;
 	const row = 3 * nw;
+	const plane = nv * row;
 	const out = new Float64Array(3 * sorted.length);
-	const slab = new Float64Array(size * nv * row);
+	const slab = new Float64Array(size * plane);
 	const column = new Float64Array(pairs * row);
 	const cell = new Float64Array(3 * terms);
-	const phi = new Float64Array(terms);
-	const tx = new Float64Array(size + 1);
-	const ty = new Float64Array(size + 1);
-	const tz = new Float64Array(size + 1);
+	const { phi, tx, ty, tz } = makeScratch(order, terms);
 	let columnKey = -1;
 	let slabKey = -1;
 	for (let o = 0; o < keys.length; o++) {
 		const c0 = keys[o] % cw;
-		const key = (keys[o] - c0) / cw;
-		if (key !== columnKey) {
-			columnKey = key;
-			const b0 = key % cv;
-			const a0 = Math.floor(key / cv);
+		const line = (keys[o] - c0) / cw;
+		if (line !== columnKey) {
+			columnKey = line;
+			const b0 = line % cv;
+			const a0 = (line - b0) / cv;
 			if (a0 !== slabKey) {
 				slabKey = a0;
 				slab.fill(0);
 				for (let a = 0; a < size; a++) {
-					const to = a * nv * row;
-					for (let i = 0; i < nu; i++) {
-						const f = eu.coefficients[(a0 * size + a) * nu + i];
-						const from = i * nv * row;
-						for (let k = 0; k < nv * row; k++) slab[to + k] += f * lattice[from + k];
-					}
+					collect(slab, a * plane, eu.coefficients, (a0 * size + a) * nu, nu, lattice, 0, plane);
 				}
 			}
 			column.fill(0);
 			for (let a = 0, ab = 0; a < size; a++) {
 				for (let b = 0; b < size - a; b++, ab++) {
-					const to = ab * row;
-					for (let j = 0; j < nv; j++) {
-						const f = ev.coefficients[(b0 * size + b) * nv + j];
-						const from = (a * nv + j) * row;
-						for (let k = 0; k < row; k++) column[to + k] += f * slab[from + k];
-					}
+					collect(column, ab * row, ev.coefficients, (b0 * size + b) * nv, nv, slab, a * plane, row);
 				}
 			}
 		}
-		for (let a = 0, ab = 0, l = 0; a < size; a++) {
-			for (let b = 0; b < size - a; b++, ab++) {
-				for (let c = 0; c < size - a - b; c++, l++) {
-					const from = (c0 * size + c) * nw;
-					const base = ab * row;
-					let x = 0;
-					let y = 0;
-					let z = 0;
-					for (let k = 0; k < nw; k++) {
-						const f = ew.coefficients[from + k];
-						x += f * column[base + 3 * k];
-						y += f * column[base + 3 * k + 1];
-						z += f * column[base + 3 * k + 2];
-					}
-					cell[3 * l] = x;
-					cell[3 * l + 1] = y;
-					cell[3 * l + 2] = z;
-				}
-			}
-		}
+		collectCell(cell, column, row, ew.coefficients, c0 * size * nw, nw, size);
 		for (let i = starts[o]; i < starts[o + 1]; i++) {
-			chebyshevProducts(order, local[3 * i], local[3 * i + 1], local[3 * i + 2], tx, ty, tz, phi);
-			let x = 0;
-			let y = 0;
-			let z = 0;
-			for (let l = 0, m = 0; l < terms; l++, m += 3) {
-				const p = phi[l];
-				x += p * cell[m];
-				y += p * cell[m + 1];
-				z += p * cell[m + 2];
-			}
-			const at = 3 * sorted[i];
-			out[at] = x;
-			out[at + 1] = y;
-			out[at + 2] = z;
+			chebyshevProducts(order, local[3 * i], local[3 * i + 1], local[3 * i + 2], tx, ty, tz, phi[0]);
+			valueAt(out, 3 * sorted[i], phi[0], cell, terms);
 		}
 	}
 	return out;

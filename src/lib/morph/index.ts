@@ -11,5 +11,6 @@ export { matchMap } from './map-match';
 export { displayDensity, mapTotal, nodalGradient, type NodalMap } from './nodal';
 export { checkBox, controlPoints, embed, pointIndex } from './box';
 export { computeMove, prepareMove } from './move';
+export { latticeMotion, type LatticeMotion } from './motion';
 export { applyDisplacement, storePositions } from './store';
 export { checkMove, type CheckMoveInput } from './checks';

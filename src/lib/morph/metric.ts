@@ -90,7 +90,7 @@ export const VW = 5;
  * M_ab = sum over v of m_v B_a B_b, K_ab = sum over v of m_v grad B_a . (I - n n') grad B_b: the tangential Dirichlet
  * energy lumped at the vertices. Only moments of m (I - n n') are needed: its trace is 2 m.
  *
- * @param moments 6 sets (UU..VW) of m (I - n n') in box axes, each functions_u x functions_v x functions_w
+ * @param moments of m (I - n n') in box axes: 2 groups (UU VV WW, UV UW VW) x functions_u x functions_v x functions_w x 3
  * @param tables product tables by axis, slopes per metre
  * @param smoothing r in metres
  * @param freeIndex row of each control point in the result, -1 for held ones
@@ -110,7 +110,10 @@ export function metricFromMoments(
 	const fw = tw.functions;
 	const volume = fu * fv * fw;
 	const r2 = smoothing * smoothing;
-	const set = (k: number) => moments.subarray(k * volume, (k + 1) * volume);
+	const set = (k: number) => {
+		const from = 3 * volume * Math.floor(k / 3) + (k % 3);
+		return Float64Array.from({ length: volume }, (_, i) => moments[from + 3 * i]);
+	};
 	const [suu, svv, sww, suv, suw, svw] = [UU, VV, WW, UV, UW, VW].map(set);
 	const mass = new Float64Array(volume);
 	for (let i = 0; i < volume; i++) mass[i] = (suu[i] + svv[i] + sww[i]) / 2;

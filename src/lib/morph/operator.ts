@@ -27,7 +27,7 @@ export class BoxOperator {
 
 	constructor(
 		readonly box: DesignBox,
-		surface: Surface,
+		surface: Pick<Surface, 'positions'>,
 		weights: Float64Array | undefined,
 		path: 'auto' | 'direct' | 'moments'
 	) {
@@ -45,7 +45,7 @@ export class BoxOperator {
 		if (box.basis === 'bernstein' && path !== 'direct') {
 			const direct = inside.length * this.free.length * this.free.length * 1.5;
 			if (path === 'moments' || direct > inside.length * CELL_COST_PER_VERTEX + CELL_COST_FIXED) {
-				chosen = chooseCells([box.lattice[0] - 1, box.lattice[1] - 1, box.lattice[2] - 1]);
+				chosen = chooseCells([box.lattice[0] - 1, box.lattice[1] - 1, box.lattice[2] - 1], inside.length);
 			}
 		}
 		this.grid = chosen ? makeCellGrid(uvw, chosen.cells, chosen.order) : null;
@@ -73,14 +73,10 @@ export class BoxOperator {
 			local[3 * i + 1] = w * field[v + 1];
 			local[3 * i + 2] = w * field[v + 2];
 		}
-		const out = new Float64Array(3 * this.pointCount);
 		if (this.grid) {
-			const moments = cellMoments(this.grid, local, 3, gridExpansions(this.grid, this.degrees(1)));
-			for (let p = 0; p < this.pointCount; p++) {
-				for (let d = 0; d < 3; d++) out[3 * p + d] = moments[d * this.pointCount + p];
-			}
-			return out;
+			return cellMoments(this.grid, local, 3, gridExpansions(this.grid, this.degrees(1)));
 		}
+		const out = new Float64Array(3 * this.pointCount);
 		this.eachVertex((i, u, v, w) => {
 			const x = local[3 * i];
 			const y = local[3 * i + 1];
