@@ -43,6 +43,11 @@ export function signedSensible(x: number, figures = 3): string {
 	return x > 0 ? `+${text}` : text;
 }
 
+/** A value that a person entered, as they entered it: up to nine figures, no tail of zeros. */
+export function plain(x: number): string {
+	return Number.isFinite(x) ? String(Number(x.toPrecision(9))).replace('-', MINUS) : NOTHING;
+}
+
 /** 40,212 */
 export function count(n: number): string {
 	return Math.round(n)
