@@ -1,5 +1,5 @@
 import { createHash } from 'node:crypto';
-import { existsSync, mkdirSync, readFileSync, readdirSync, rmSync, writeFileSync } from 'node:fs';
+import { existsSync, mkdirSync, readFileSync, readdirSync, rmSync, statSync, writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { bundle, commandEntries, workerEntries } from './bundles.mjs';
 import { withLock } from './lock.mjs';
@@ -30,7 +30,8 @@ function hashSources() {
 	/** @param {string} path */
 	const walk = (path) => {
 		if (!existsSync(join(ROOT, path))) return;
-		if (/\.[a-z]+$/.test(path)) return add(path);
+		// By what it is, not by its name: a route's folder may be called openapi.json.
+		if (statSync(join(ROOT, path)).isFile()) return add(path);
 		for (const entry of readdirSync(join(ROOT, path), { withFileTypes: true }).sort((a, b) =>
 			a.name < b.name ? -1 : 1
 		)) {
