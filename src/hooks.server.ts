@@ -3,7 +3,6 @@ import { randomUUID } from 'node:crypto';
 import { redirect, type Handle, type HandleServerError, type RequestEvent, type ServerInit } from '@sveltejs/kit';
 import { sequence } from '@sveltejs/kit/hooks';
 import { building } from '$app/environment';
-import { env } from '$env/dynamic/private';
 import { handle as authRoutes, hasSessionCookie, readSession } from './auth';
 import { bearerOf } from '$lib/server/auth/bearer';
 import { isForged } from '$lib/server/auth/csrf';
@@ -11,15 +10,15 @@ import { identifySession, identifyToken } from '$lib/server/auth/identify';
 import { AppError } from '$lib/server/errors';
 import { secure } from '$lib/server/http/headers';
 import { problemResponse } from '$lib/server/http/problem';
+import { startServing } from '$lib/server/lifecycle';
 import { log } from '$lib/server/log';
 
 const THEMES = ['light', 'dark'];
 
 const isApi = ({ url }: RequestEvent) => url.pathname === '/api' || url.pathname.startsWith('/api/');
 
-export const init: ServerInit = () => {
-	if (building) return;
-	if (!env.AUTH_SECRET) throw new Error('AUTH_SECRET is not set; npm start makes one and keeps it in the data folder.');
+export const init: ServerInit = async () => {
+	if (!building) await startServing();
 };
 
 const record: Handle = async ({ event, resolve }) => {
