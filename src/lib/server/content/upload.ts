@@ -32,7 +32,7 @@ const tooLarge = (filename: string) =>
  * @throws AppError too-large; bad-file when it is empty or broke off
  */
 export async function withUpload<T>(
-	body: AsyncIterable<Uint8Array> | null,
+	body: AsyncIterable<Uint8Array> | Iterable<Uint8Array> | null,
 	{ filename, announced }: { filename: string; announced: number | null },
 	work: (upload: Upload) => Promise<T>
 ): Promise<T> {

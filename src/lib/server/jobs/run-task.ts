@@ -1,4 +1,5 @@
 /** Does one task in a worker thread, whatever comes of it. The thread's entry is a shell over this. */
+import { database } from '../db/client';
 import { AppError, asAppError } from '../errors';
 import { MeshCache } from '../services/mesh-cache';
 import { Control, Stopped } from './control';
@@ -22,6 +23,8 @@ const JOBS: Record<ClaimedJob['kind'], (task: JobTask) => Promise<void>> = {
 /** @param cache kept by the thread from preview to preview */
 export async function runTask(task: ThreadTask, cache: MeshCache): Promise<ThreadOutcome> {
 	const control = new Control(task.control);
+	// Binds the models, also in a thread whose first query goes through one.
+	database();
 	try {
 		switch (task.kind) {
 			case 'job':

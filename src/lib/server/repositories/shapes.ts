@@ -7,7 +7,6 @@ import { StudyModel } from '../db/models/studies';
 import type { Tx } from './transaction';
 
 export type { UserModel as UserRow } from '../db/models/people';
-export type { StudyModel as StudyRow } from '../db/models/studies';
 export type {
 	MapModel as MapRow,
 	Measures,

@@ -1,6 +1,7 @@
 /** The readable page that goes to the solver's people with a shape. */
 import type { Check, ConstraintAnswer } from '$lib/api/schemas';
-import type { ShapeRow, StudyRow } from '../repositories/shapes';
+import type { ShapeRow } from '../repositories/shapes';
+import type { StudyRow } from '../repositories/studies';
 import { CAUTION } from './move-engine';
 import type { StudyObjective } from './recipe';
 
@@ -13,6 +14,8 @@ export interface HandoverParts {
 	stl: { name: string; sha256: string; encoding: 'binary' | 'ascii' };
 }
 
+/** Enough digits to see that something was held. */
+const exact = (value: number) => String(Number(value.toPrecision(10)));
 const digits = (value: number) => String(Number(value.toPrecision(6)));
 const millimetres = (metres: number) => `${digits(1000 * metres)} mm`;
 const signed = (value: number) => (value > 0 ? `+${digits(value)}` : digits(value));
@@ -52,7 +55,7 @@ function moveLines(
 	return [
 		'The move (complete in recipe.json)',
 		`  Design boxes       ${recipe.boxes.map((box) => `${box.name} (version ${box.version})`).join(', ')}`,
-		`  Step               ${millimetres(recipe.step)}, the largest displacement`,
+		`  Step               ${millimetres(recipe.step)} (the largest displacement asked for)`,
 		`  Smoothing length   ${millimetres(recipe.smoothing)}`,
 		`  Displacement       largest ${millimetres(answer.maxDisplacement)}, rms in the boxes ${millimetres(answer.rmsDisplacement)}`,
 		'  Outside the boxes every vertex is as in the parent, bit for bit.',
@@ -74,7 +77,7 @@ function moveLines(
 
 function constraintLine(c: ConstraintAnswer, name: (id: string | undefined) => string): string {
 	const what = c.kind === 'volume' ? 'Volume' : name(c.objectiveId);
-	const values = c.before === null || c.after === null ? '' : `: ${c.before} -> ${c.after} ${c.unit}`;
+	const values = c.before === null || c.after === null ? '' : `: ${exact(c.before)} -> ${exact(c.after)} ${c.unit}`;
 	return `  ${what} ${BOUNDS[c.bound]}${values}${c.active ? ', binds' : ', free'}`;
 }
 

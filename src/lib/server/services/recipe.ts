@@ -1,8 +1,10 @@
 /** Completes what a caller asks for to a recipe: everything that the move depends on, as it is at this moment. */
 import type { Box, ConstraintRequest, LengthUnit, Recipe, RecipeRequest } from '$lib/api/schemas';
 import { AppError } from '../errors';
-import { findBoxesOf, findObjectives, findOperatingPoints } from '../repositories/recipes';
+import { findBoxes } from '../repositories/boxes';
 import { findLatestMaps, findLatestResults, type MapRow, type ShapeRow } from '../repositories/shapes';
+import { listObjectives, listOperatingPoints } from '../repositories/studies';
+import { boxAnswer } from './boxes';
 
 /** Raised whenever the same recipe would give other bits. */
 export const ENGINE_VERSION = '1';
@@ -33,8 +35,8 @@ function invalid(pointer: string, detail: string, mend: string): AppError {
 export async function completeRecipe(shape: ShapeRow, request: RecipeRequest): Promise<CompleteRecipe> {
 	const { studyId } = shape;
 	const [objectives, points, boxes, maps] = await Promise.all([
-		findObjectives(studyId),
-		findOperatingPoints(studyId),
+		listObjectives(studyId),
+		listOperatingPoints(studyId),
 		chooseBoxes(studyId, request.boxIds),
 		findLatestMaps([shape.id])
 	]);
@@ -82,7 +84,7 @@ export async function completeRecipe(shape: ShapeRow, request: RecipeRequest): P
 
 /** In the order asked for. */
 async function chooseBoxes(studyId: string, ids: string[]): Promise<Box[]> {
-	const found = new Map((await findBoxesOf(studyId, ids)).map((box) => [box.id, box]));
+	const found = new Map((await findBoxes(studyId, ids)).map((box) => [box.id, boxAnswer(box)]));
 	return ids.map((id, i) => {
 		const box = found.get(id);
 		if (!box || ids.indexOf(id) !== i) {

@@ -5,7 +5,7 @@ import type { Actor } from '../auth/caller';
 import type { Upload } from '../content/upload';
 import { AppError } from '../errors';
 import { recordEvent } from '../repositories/audit';
-import { findObjectives, findOperatingPoints } from '../repositories/recipes';
+import { listObjectives, listOperatingPoints } from '../repositories/studies';
 import * as shapes from '../repositories/shapes';
 import { inTransaction } from '../repositories/transaction';
 import { queueJob } from './jobs';
@@ -31,7 +31,7 @@ export function importShape(
 export async function listShapes(studyId: string): Promise<ShapeSummary[]> {
 	const [rows, objectives, mapCounts] = await Promise.all([
 		shapes.findShapes(studyId),
-		findObjectives(studyId),
+		listObjectives(studyId),
 		shapes.countMaps(studyId)
 	]);
 	const results = await shapes.findLatestResults(rows.map((row) => row.id));
@@ -49,7 +49,7 @@ export async function listShapes(studyId: string): Promise<ShapeSummary[]> {
 export async function getShape(id: string): Promise<Shape> {
 	const row = await requireShape(id);
 	const [objectives, results, maps] = await Promise.all([
-		findObjectives(row.studyId),
+		listObjectives(row.studyId),
 		shapes.findLatestResults([id]),
 		shapes.findLatestMaps([id])
 	]);
@@ -72,7 +72,7 @@ export async function requireObjectiveAt(
 	studyId: string,
 	{ objectiveId, operatingPointId }: { objectiveId: string; operatingPointId?: string }
 ): Promise<{ objectiveId: string; operatingPointId: string; objectiveName: string }> {
-	const [objectives, points] = await Promise.all([findObjectives(studyId), findOperatingPoints(studyId)]);
+	const [objectives, points] = await Promise.all([listObjectives(studyId), listOperatingPoints(studyId)]);
 	const objective = objectives.find((row) => row.id === objectiveId);
 	if (!objective) {
 		throw new AppError('invalid', 'The study has no such objective.', {

@@ -1,11 +1,12 @@
 /** Writes a shape as a file, piece by piece, as fast as the other end takes the pieces. */
 import { createHash } from 'node:crypto';
+import { Readable } from 'node:stream';
 import type { MessagePort } from 'node:worker_threads';
 import JSZip from 'jszip';
 import { displayDensity, makeSurface, stlChunks, toMetres, writeStl } from '$lib/morph';
 import { AppError } from '../../errors';
 import { findMap, findShape, findStudy } from '../../repositories/shapes';
-import { findObjectives } from '../../repositories/recipes';
+import { listObjectives } from '../../repositories/studies';
 import { metresPerUnit, readGradient, readMesh } from '../../services/mesh-cache';
 import { handoverText } from '../../services/handover';
 import type { Control } from '../control';
@@ -87,7 +88,7 @@ async function* handover({
 	const { shape, mesh } = await load(shapeId);
 	const [study, objectives, parent] = await Promise.all([
 		findStudy(shape.studyId),
-		findObjectives(shape.studyId),
+		listObjectives(shape.studyId),
 		shape.parentId ? findShape(shape.parentId) : null
 	]);
 	const bytes = writeStl(mesh);
@@ -110,7 +111,8 @@ async function* handover({
 		compression: 'DEFLATE',
 		compressionOptions: { level: 1 }
 	});
-	for await (const piece of stream) yield piece as unknown as Uint8Array;
+	// jszip's stream is of an older kind, which cannot be iterated.
+	yield* new Readable().wrap(stream);
 }
 
 async function* density({ mapId }: Extract<FileRequest, { format: 'density' }>): AsyncGenerator<Uint8Array> {

@@ -116,7 +116,7 @@ function unfit(
 	const ratio = extentOf(points) / (extentOfBounds(bounds) / metres);
 	const unit = UNIT_RATIOS.find(([factor]) => Math.abs(ratio / factor - 1) < 0.05);
 	const mend = unit
-		? `The file’s points span ${unit[1]}. Scale x, y and z to the study’s length unit and upload it again.`
+		? `The file’s extent is ${unit[1]}. Scale x, y and z to the study’s length unit and upload it again.`
 		: 'Check that the map was computed on this very shape, and that it has the study’s frame of coordinates and length unit.';
 	return new AppError('bad-file', `${filename} does not fit the shape. ${what}.`, { mend });
 }
