@@ -26,20 +26,21 @@ function authSecret(data) {
  * What the application's programs find in their environment.
  * @param {import('./settings.mjs').Settings} settings
  * @param {string} databaseUrl
- * @param {NodeJS.ProcessEnv} [env] what the person set wins
+ * @param {NodeJS.ProcessEnv} [env] what the person set
  * @returns {NodeJS.ProcessEnv}
  */
 export function appEnvironment({ host, port, origin, data }, databaseUrl, env = process.env) {
 	dataFolder(data);
+	const given = Object.fromEntries(Object.entries(env).filter(([, value]) => value));
 	return {
-		NODE_ENV: 'production',
-		AUTH_SECRET: env.AUTH_SECRET || authSecret(data),
 		AUTH_TRUST_HOST: 'true',
 		// The routes limit what they read; the adapter's own limit would cut uploads at 512 kB.
 		BODY_SIZE_LIMIT: 'Infinity',
 		PLANISH_WORKER_DIR: join(ROOT, 'build', 'workers'),
 		SHUTDOWN_TIMEOUT: '10',
-		...env,
+		...given,
+		AUTH_SECRET: env.AUTH_SECRET || authSecret(data),
+		NODE_ENV: 'production',
 		HOST: host,
 		PORT: String(port),
 		ORIGIN: origin,
@@ -125,7 +126,7 @@ export async function startServer(url, data, env, stopping = new Promise(() => {
 	const file = createWriteStream(log, { flags: 'a', mode: 0o600 });
 	let tail = '';
 	for (const stream of [child.stdout, child.stderr]) {
-		stream.on('data', (bytes) => {
+		stream?.on('data', (bytes) => {
 			file.write(bytes);
 			tail = (tail + bytes).slice(-8000);
 		});

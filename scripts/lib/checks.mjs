@@ -1,5 +1,5 @@
 // The static checks: format, lint, types, layers. Each is one check that passes or fails.
-import { mkdirSync } from 'node:fs';
+import { existsSync, mkdirSync } from 'node:fs';
 import { join, relative } from 'node:path';
 import { syncTypes, tool } from './build.mjs';
 import { run } from './processes.mjs';
@@ -15,7 +15,7 @@ const CHECKS = [
 		'layers',
 		[
 			tool('dependency-cruiser/bin/dependency-cruise.mjs'),
-			...['src', 'tests', 'bench', 'scripts', 'migrations'],
+			...['src', 'tests', 'bench', 'scripts', 'migrations'].filter((folder) => existsSync(join(ROOT, folder))),
 			...['--config', '.dependency-cruiser.js', '--output-type', 'err-long']
 		]
 	]

@@ -51,10 +51,10 @@ export async function startServer(options: { demo?: boolean; env?: Record<string
 	const databaseUrl = await createDatabase(postgresUrl);
 	const data = join(ROOT, 'test-results', 'servers', new URL(databaseUrl).pathname.slice(1));
 	mkdirSync(data, { recursive: true });
-	const inherited = { ...process.env, NODE_ENV: undefined, AUTH_SECRET: undefined, ORIGIN: undefined };
 	const settings = readSettings({ PORT: String(await freePort()), PLANISH_DATA: data });
-	const env = { ...appEnvironment(settings, databaseUrl, inherited), NODE_ENV: 'production', ...options.env };
-	env.AUTH_SECRET ??= randomBytes(32).toString('base64url');
+	// The runner's own marks would silence the server's log.
+	const inherited = { ...process.env, AUTH_SECRET: undefined, VITEST: undefined };
+	const env = { ...appEnvironment(settings, databaseUrl, inherited), ...options.env };
 	if (options.demo) await runCommand('demo', env, { what: 'The demo could not be loaded' });
 	let server = await spawnServer(settings.url, data, env);
 
