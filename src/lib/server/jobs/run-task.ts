@@ -1,7 +1,7 @@
 /** Does one task in a worker thread, whatever comes of it. The thread's entry is a shell over this. */
 import { database } from '../db/client';
 import { AppError, asAppError } from '../errors';
-import { MeshCache } from '../services/mesh-cache';
+import { type MeshCache } from '../services/mesh-cache';
 import { Control, Stopped } from './control';
 import type { ThreadOutcome, ThreadTask } from './protocol';
 import { fileTask } from './tasks/file';
