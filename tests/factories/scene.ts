@@ -80,6 +80,8 @@ export async function sendFile(
 	path: string,
 	file: Uint8Array<ArrayBuffer> | string
 ): Promise<Answered<{ jobId: string }>> {
+	// Making a large file may have kept this process from seeing that the server closed an idle connection.
+	await new Promise((resolve) => setTimeout(resolve, 20));
 	const response = await server.fetch(path, {
 		method: 'POST',
 		token: token ?? undefined,

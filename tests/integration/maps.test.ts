@@ -118,11 +118,16 @@ describe('POST /api/shapes/{id}/sensitivities', () => {
 
 	it('says how much of the surface a partial map covers', async () => {
 		const lines = csvOf(soup, field).trimEnd().split('\n');
-		const half = [lines[0], ...lines.slice(1).filter((line) => Number(line.split(',')[0]) > 0)];
-		const report = await scene.importMap(shape.id, half.join('\n'));
-		expect(report.rows).toBe(half.length - 1);
-		expect(report.coverage).toBeGreaterThan(0.4);
-		expect(report.coverage).toBeLessThan(0.6);
+		const beyond = (x: number) => [lines[0], ...lines.slice(1).filter((line) => Number(line.split(',')[0]) > x)];
+		const most = beyond(-100);
+		const report = await scene.importMap(shape.id, most.join('\n'));
+		expect(report.rows).toBe(most.length - 1);
+		expect(report.coverage).toBeGreaterThan(0.6);
+		expect(report.coverage).toBeLessThan(0.8);
+		// Less than half of the surface says that the map belongs to another shape, or is in another unit.
+		const problem = await refused(beyond(0).join('\n'));
+		expect(problem.code).toBe('bad-file');
+		expect(problem.detail).toMatch(/4\d %/);
 	});
 
 	it('matches points beside the vertices by the nearest place, and counts those that are far off', async () => {
@@ -148,12 +153,12 @@ describe('a map that can’t be used', () => {
 		const problem = await refused(lines.join('\n'), { filename: 'adjoint.csv' });
 		expect(problem.code).toBe('bad-file');
 		expect(problem.detail).toContain('adjoint.csv');
-		expect(problem.detail).toMatch(/line 11/);
+		expect(problem.detail).toMatch(/line 11/i);
 		expect(problem.mend).toMatch(/./);
 		lines[10] = '1,2';
-		expect((await refused(lines.join('\n'))).detail).toMatch(/line 11/);
+		expect((await refused(lines.join('\n'))).detail).toMatch(/line 11/i);
 		lines[10] = '1,2,3,inf';
-		expect((await refused(lines.join('\n'))).detail).toMatch(/line 11/);
+		expect((await refused(lines.join('\n'))).detail).toMatch(/line 11/i);
 	});
 
 	it('is refused when empty, when it lies elsewhere, and when its kind is another', async () => {

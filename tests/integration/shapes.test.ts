@@ -3,7 +3,7 @@ import { request } from 'node:http';
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
 import * as schemas from '$lib/api/schemas';
 import type { Job, Problem, Shape } from '$lib/api/schemas';
-import { call, newScene, problemIn, sendFile, storedRows, upload, type Scene } from '../factories/scene';
+import { call, newScene, ok, problemIn, sendFile, storedRows, upload, type Scene } from '../factories/scene';
 import { readSoup, soupArea, soupOf, soupVolume, weldSoup, writeAsciiSoup, writeBinarySoup } from '../factories/stl';
 import { ellipsoid } from '../factories/surfaces';
 import { startServer, type TestServer } from '../harness/server';
@@ -132,7 +132,7 @@ describe('a file that can’t be used', () => {
 		const problem = await refused(lines.join('\n'), 'broken.stl');
 		expect(problem.code).toBe('bad-file');
 		expect(problem.detail).toContain('broken.stl');
-		expect(problem.detail).toMatch(/line 2[0-9]/);
+		expect(problem.detail).toMatch(/line 2[0-9]/i);
 		expect(problem.mend).toMatch(/./);
 	});
 
@@ -196,6 +196,15 @@ describe('the call itself', () => {
 		problemIn(await sendFile(server, outsider.token, importPath(), bytes), 404, 'not-found');
 		problemIn(await sendFile(server, null, importPath(), bytes), 401, 'unauthenticated');
 		expect(await storedRows(server)).toEqual(before);
+	});
+
+	it('is answered when it refuses a large file before reading it, and the connection serves on', async () => {
+		const viewer = await scene.member('viewer');
+		const large = new Uint8Array(20_000_000);
+		for (let n = 0; n < 3; n++) {
+			problemIn(await sendFile(server, viewer.token, importPath(), large), 403, 'forbidden');
+			await ok(server, viewer.token, 'GET', `/api/studies/${scene.study.id}`);
+		}
 	});
 
 	it('takes a file far beyond the usual limit of a request’s body', async () => {
