@@ -1,6 +1,13 @@
 /** What every request passes: its log line, the check for forged ones, who calls, and the guard of the pages. */
 import { randomUUID } from 'node:crypto';
-import { redirect, type Handle, type HandleServerError, type RequestEvent, type ServerInit } from '@sveltejs/kit';
+import {
+	error,
+	redirect,
+	type Handle,
+	type HandleServerError,
+	type RequestEvent,
+	type ServerInit
+} from '@sveltejs/kit';
 import { sequence } from '@sveltejs/kit/hooks';
 import { building } from '$app/environment';
 import { handle as authRoutes, hasSessionCookie, readSession } from './auth';
@@ -8,7 +15,7 @@ import { bearerOf } from '$lib/server/auth/bearer';
 import { isForged } from '$lib/server/auth/csrf';
 import { identifySession, identifyToken } from '$lib/server/auth/identify';
 import { AppError } from '$lib/server/errors';
-import { secure } from '$lib/server/http/headers';
+import { secured } from '$lib/server/http/headers';
 import { problemResponse } from '$lib/server/http/problem';
 import { startServing } from '$lib/server/lifecycle';
 import { log } from '$lib/server/log';
@@ -23,8 +30,7 @@ export const init: ServerInit = async () => {
 
 const record: Handle = async ({ event, resolve }) => {
 	const start = performance.now();
-	const response = await resolve(event);
-	secure(response);
+	const response = secured(await resolve(event));
 	const line = {
 		method: event.request.method,
 		path: event.url.pathname,
@@ -48,11 +54,12 @@ const refuseForged: Handle = ({ event, resolve }) => {
 	});
 	// What a page asks for while it is rendered on the server comes from our own code.
 	if (!forged || event.isSubRequest) return resolve(event);
-	return problemResponse(
-		new AppError('cross-site', `Origin ${request.headers.get('origin') ?? '(none)'} is not this site, ${url.origin}.`, {
-			mend: 'Open Planish by its own address. Programs send an API token; behind a proxy set ORIGIN to the public address.'
-		})
-	);
+	const detail = `The request’s origin, ${request.headers.get('origin') ?? '(none)'}, is not this site, ${url.origin}.`;
+	const mend = isApi(event)
+		? 'Programs send an API token instead of a session.'
+		: 'Open Planish by its own address; behind a proxy, whoever runs it sets ORIGIN to the public one.';
+	if (event.route.id && !isApi(event)) error(403, `${detail} ${mend}`);
+	return problemResponse(new AppError('cross-site', detail, { mend }));
 };
 
 const identify: Handle = async ({ event, resolve }) => {
@@ -96,9 +103,9 @@ const explainMethods: Handle = async ({ event, resolve }) => {
 
 export const handle = sequence(record, refuseForged, identify, authRoutes, explainMethods, guardPages);
 
-export const handleError: HandleServerError = ({ error, event, status, message }) => {
+export const handleError: HandleServerError = ({ error: thrown, event, status, message }) => {
 	if (status < 500) return { message };
 	const id = randomUUID();
-	log.error({ err: error, errorId: id, path: event.url.pathname }, 'unexpected error');
+	log.error({ err: thrown, errorId: id, path: event.url.pathname }, 'unexpected error');
 	return { message: `Something went wrong. The server’s log has it as ${id}.`, id };
 };

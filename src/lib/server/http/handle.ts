@@ -3,7 +3,7 @@
  * membership in the query, checks role and token, validates, calls, and lets only the listed fields of the answer leave.
  */
 import { isHttpError, isRedirect, json, type RequestEvent, type RequestHandler } from '@sveltejs/kit';
-import { z } from 'zod';
+import type { z } from 'zod';
 import type { Operation, Subject } from '$lib/api/contract';
 import type { Role } from '$lib/api/schemas';
 import type { Caller, SignedInUser, StudyAccess } from '../auth/caller';
@@ -51,12 +51,23 @@ const WORD: Record<Subject, string> = {
 	none: 'thing'
 };
 
-const notFound = (subject: Subject) =>
-	new AppError('not-found', `There is no such ${WORD[subject]}, or you have no part in its study.`);
+function notFound(subject: Subject): AppError {
+	const what = `There is no such ${WORD[subject]}`;
+	if (!isOfStudy(subject)) return new AppError('not-found', `${what}.`);
+	return new AppError('not-found', `${what}, or you have no part in ${subject === 'study' ? 'it' : 'its study'}.`);
+}
 
-async function studyAccess(operation: Operation, id: string, caller: Caller): Promise<StudyAccess> {
-	const found = await findStudyAccess(operation.subject as StudySubject, id, caller);
-	if (!found) throw notFound(operation.subject);
+const isOfStudy = (subject: Subject): subject is StudySubject =>
+	subject !== 'user' && subject !== 'token' && subject !== 'none';
+
+async function studyAccess(
+	operation: Operation,
+	subject: StudySubject,
+	id: string,
+	caller: Caller
+): Promise<StudyAccess> {
+	const found = await findStudyAccess(subject, id, caller);
+	if (!found) throw notFound(subject);
 	const needed = operation.access as Role;
 	if (RANK[found.role] < RANK[needed]) {
 		throw new AppError('forbidden', `This needs the role ${needed}; in this study you are ${found.role}.`, {
@@ -80,8 +91,7 @@ async function authorise(operation: Operation, event: RequestEvent): Promise<Cal
 		throw new AppError('forbidden', 'Only an admin of this installation may do this.');
 	}
 	const { subject } = operation;
-	if (subject === 'user' || subject === 'token' || subject === 'none') return caller;
-	return studyAccess(operation, params.id!, caller);
+	return isOfStudy(subject) ? studyAccess(operation, subject, params.id!, caller) : caller;
 }
 
 function respond(operation: Operation, answer: unknown): Response {
@@ -112,6 +122,8 @@ export function handle<const O extends Operation>(
 			return respond(operation, await call(context as unknown as CallContext<O>));
 		} catch (thrown) {
 			if (isRedirect(thrown) || isHttpError(thrown)) throw thrown;
+			// Nobody reads this answer: it keeps the broken stream of an upload that was called off out of the log's errors.
+			if (event.request.signal.aborted) return problemResponse(new AppError('cancelled', 'The caller hung up.'));
 			return problemResponse(thrown);
 		}
 	};

@@ -12,10 +12,11 @@ const ALWAYS: Record<string, string> = {
 /** For what is no page: nothing in it may run or load anything. */
 const DATA_POLICY = "default-src 'none'; frame-ancestors 'none'";
 
-/** Sets them where the answer has none of its own. */
-export function secure(response: Response): void {
-	const { headers } = response;
+/** The answer with them where it has none of its own. A new one, since a redirect's headers can't be changed. */
+export function secured(response: Response): Response {
+	const headers = new Headers(response.headers);
 	for (const [name, value] of Object.entries(ALWAYS)) if (!headers.has(name)) headers.set(name, value);
 	const isPage = headers.get('content-type')?.startsWith('text/html');
 	if (!isPage && !headers.has('content-security-policy')) headers.set('content-security-policy', DATA_POLICY);
+	return new Response(response.body, { status: response.status, statusText: response.statusText, headers });
 }

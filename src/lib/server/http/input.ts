@@ -28,16 +28,36 @@ function unknownFields(input: unknown, output: unknown, path: PropertyKey[] = []
 	return Object.entries(input).flatMap(([key, value]) =>
 		Object.hasOwn(output, key)
 			? unknownFields(value, (output as Record<string, unknown>)[key], [...path, key])
-			: [{ pointer: pointer([...path, key]), detail: 'no such field' }]
+			: [{ pointer: pointer([...path, key]), detail: 'is no field of this call' }]
 	);
 }
 
+/** What is wrong with a value, in words that fit behind the field's name; schemas that have words of their own keep them. */
+const inWords: z.core.$ZodErrorMap = (issue) => {
+	if (issue.code === 'invalid_type') return issue.input === undefined ? 'is missing' : `must be ${issue.expected}`;
+	if (issue.code === 'invalid_value')
+		return `must be ${issue.values.length > 1 ? 'one of ' : ''}${issue.values.join(', ')}`;
+	if (issue.code === 'too_small' || issue.code === 'too_big') {
+		const small = issue.code === 'too_small';
+		const limit = small ? issue.minimum : issue.maximum;
+		if (issue.origin === 'string' && small && limit === 1) return 'must not be empty';
+		const unit = UNITS[issue.origin] ?? '';
+		const open = unit === '' && !issue.inclusive;
+		const side = small ? (open ? 'more than' : 'at least') : open ? 'less than' : 'at most';
+		return unit ? `must have ${side} ${limit}${unit}` : `must be ${side} ${limit}`;
+	}
+	if (issue.code === 'invalid_format') return `is no ${FORMATS[issue.format] ?? issue.format}`;
+	return undefined;
+};
+const UNITS: Record<string, string> = { string: ' characters', array: ' entries' };
+const FORMATS: Record<string, string> = { email: 'e-mail address', uuid: 'UUID', datetime: 'date and time' };
+
 function validate<S extends z.ZodType>(schema: S, input: unknown, what: string): z.output<S> {
-	const parsed = schema.safeParse(input);
+	const parsed = schema.safeParse(input, { error: inWords });
 	const errors = parsed.success ? unknownFields(input, parsed.data) : fieldErrors(parsed.error);
 	if (parsed.success && errors.length === 0) return parsed.data;
 	const first = errors[0];
-	throw new AppError('invalid', `${what}: ${first.pointer ? `${first.pointer.slice(1)}: ` : ''}${first.detail}.`, {
+	throw new AppError('invalid', `${what}: ${first.pointer ? `${first.pointer.slice(1)} ` : ''}${first.detail}.`, {
 		errors,
 		mend: errors.length > 1 ? `Correct the ${errors.length} fields that are listed.` : 'Correct it and send it again.'
 	});
@@ -52,7 +72,7 @@ export function validateQuery<S extends z.ZodType>(schema: S, query: URLSearchPa
 	for (const key of new Set(query.keys())) {
 		if (query.getAll(key).length > 1) {
 			throw new AppError('invalid', `The query gives ${key} more than once.`, {
-				errors: [{ pointer: pointer([key]), detail: 'given more than once' }]
+				errors: [{ pointer: pointer([key]), detail: 'is given more than once' }]
 			});
 		}
 	}
