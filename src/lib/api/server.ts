@@ -16,6 +16,8 @@ export async function loadFrom<T>(fetcher: typeof fetch, ask: (api: ApiClient) =
 /** What a refused form hands back to its page: which form, what was wrong, and everything that was typed. */
 export interface FormFailure {
 	form: string;
+	/** Everything wrong is said beside a field of the form. */
+	beside: boolean;
 	title: string;
 	detail: string;
 	mend: string | undefined;
@@ -56,8 +58,8 @@ export class FormReader {
 		return value;
 	}
 
-	flag(name: string): boolean {
-		return this.#data.get(name) !== null;
+	has(name: string): boolean {
+		return this.#data.has(name);
 	}
 
 	refuse(name: string, detail: string) {
@@ -92,6 +94,8 @@ export async function answerForm<T>(
 		if (!(cause instanceof ApiProblem) || cause.status < 400) throw cause;
 		return fail(cause.status, {
 			form,
+			beside:
+				cause.code === 'invalid' && cause.errors.length > 0 && Object.keys(cause.fields).every((f) => fields.has(f)),
 			title: cause.title,
 			detail: cause.detail,
 			mend: cause.mend,

@@ -11,18 +11,19 @@ export function enhanced(options: {
 	client: QueryClient;
 	notices: Notices;
 	done?: string;
-	/** Empty the form after success: for forms that add something. */
-	reset?: boolean;
+	onsuccess?: () => void;
 	onbusy?: (busy: boolean) => void;
 }): SubmitFunction {
-	const { client, notices, done, reset = false, onbusy } = options;
+	const { client, notices, done, onsuccess, onbusy } = options;
 	return () => {
 		onbusy?.(true);
 		return async ({ result, update }) => {
 			try {
 				if (result.type === 'error') notices.refused(asProblem(new Error(messageOf(result.error))));
-				else await update({ reset: reset && result.type === 'success' });
+				// The browser's own reset would empty what a field shows at first.
+				else await update({ reset: false });
 				if (result.type === 'success' || result.type === 'redirect') {
+					onsuccess?.();
 					if (done) notices.done(done);
 					await client.invalidateQueries();
 				}

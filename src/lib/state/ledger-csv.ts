@@ -42,7 +42,8 @@ const millimetres = (x: number | null) => (x === null ? null : Number((x * 1000)
 
 function cell(value: string | number | null | undefined): string {
 	if (value == null) return '';
-	if (typeof value === 'number') return String(value);
+	// Twelve figures: all that was stored, none of what subtracting added.
+	if (typeof value === 'number') return String(Number(value.toPrecision(12)));
 	// A name that a spreadsheet would run as a formula is kept as text.
 	const text = /^[=+\-@\t\r]/.test(value) ? `'${value}` : value;
 	return /[",\r\n]/.test(text) ? `"${text.replace(/"/g, '""')}"` : text;

@@ -1,5 +1,5 @@
 /** The study's history for one objective at one operating point: what was predicted, what was found, and what it means. */
-import type { Objective, ShapeSummary } from '$lib/api/schemas';
+import type { Objective, OperatingPoint, ShapeSummary } from '$lib/api/schemas';
 import { fixed } from '$lib/format/numbers';
 import { length, objectiveChange } from '$lib/format/units';
 import { shapeNumber } from '$lib/format/words';
@@ -21,17 +21,30 @@ export interface LedgerRow {
 	expected: number | null;
 }
 
-/** Rows in order of number. */
-export function ledgerRows(shapes: readonly ShapeSummary[], objectiveId: string, pointId: string | null): LedgerRow[] {
+/**
+ * Rows in order of number. Without `pointId` a value is the mean over the operating points by their weights, which is what
+ * a prediction is of; it needs a result at each point that counts. At one of several points there is no prediction to show.
+ */
+export function ledgerRows(
+	shapes: readonly ShapeSummary[],
+	objectiveId: string,
+	pointId: string | null,
+	points: readonly OperatingPoint[] = []
+): LedgerRow[] {
+	const counted = points.filter((point) => point.weight > 0);
+	const alone = pointId !== null && counted.some((point) => point.id !== pointId);
 	const byId = new Map(shapes.map((shape) => [shape.id, shape]));
 	const rows = new Map<string, LedgerRow>();
 	for (const shape of [...shapes].sort((a, b) => a.number - b.number)) {
-		const result = resultOf(shape, objectiveId, pointId);
+		const result =
+			pointId === null && counted.length > 1
+				? meanOf(shape, objectiveId, counted)
+				: resultOf(shape, objectiveId, pointId);
 		const parent = shape.parentId ? (byId.get(shape.parentId) ?? null) : null;
 		const before = parent ? rows.get(parent.id) : undefined;
 		const value = result?.value ?? null;
 		const uncertainty = result?.uncertainty ?? null;
-		const predicted = shape.predicted.find((p) => p.objectiveId === objectiveId)?.change ?? null;
+		const predicted = alone ? null : (shape.predicted.find((p) => p.objectiveId === objectiveId)?.change ?? null);
 		const found = value !== null && before?.value != null ? value - before.value : null;
 		const foundBand =
 			found !== null && (uncertainty !== null || before?.uncertainty != null)
@@ -57,6 +70,22 @@ function resultOf(shape: ShapeSummary, objectiveId: string, pointId: string | nu
 	return shape.results.find(
 		(r) => r.objectiveId === objectiveId && (pointId === null || r.operatingPointId === pointId)
 	);
+}
+
+/** The mean by weight; its band takes the points' runs as independent. Undefined while a point has no result. */
+function meanOf(shape: ShapeSummary, objectiveId: string, points: readonly OperatingPoint[]) {
+	const total = points.reduce((sum, point) => sum + point.weight, 0);
+	let value = 0;
+	let square = 0;
+	let banded = false;
+	for (const point of points) {
+		const result = resultOf(shape, objectiveId, point.id);
+		if (!result) return undefined;
+		value += (point.weight / total) * result.value;
+		square += ((point.weight / total) * (result.uncertainty ?? 0)) ** 2;
+		banded ||= result.uncertainty !== null;
+	}
+	return { value, uncertainty: banded ? Math.sqrt(square) : null };
 }
 
 /** The row that serves the objective best so far; for `hold`, the one nearest to the baseline's value; null before results. */

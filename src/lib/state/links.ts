@@ -1,8 +1,10 @@
 import { apiPath } from '$lib/api/client';
+import type { ShapeSummary } from '$lib/api/schemas';
 
 /** Addresses of screens and files, in one place. */
 export const ledgerHref = (studyId: string) => `/studies/${studyId}`;
-export const benchHref = (studyId: string, shapeId: string) => `/studies/${studyId}/bench?shape=${shapeId}`;
+export const benchHref = (shape: Pick<ShapeSummary, 'studyId' | 'number'>) =>
+	`/studies/${shape.studyId}/bench/${shape.number}`;
 export const studyHref = (studyId: string) => `/studies/${studyId}/study`;
 export const stlHref = (shapeId: string, encoding?: 'binary' | 'ascii') =>
 	apiPath('getStl', { id: shapeId }, { encoding });

@@ -22,7 +22,7 @@ export const actions: Actions = {
 						name: fields.text('name'),
 						email: fields.text('email'),
 						password: fields.text('password'),
-						isAdmin: fields.flag('isAdmin')
+						isAdmin: fields.has('isAdmin')
 					}
 				});
 			},

@@ -69,6 +69,7 @@ export const actions: Actions = {
 		const fields = new FormReader(await request.formData());
 		return fail(422, {
 			form: 'row',
+			beside: true,
 			title: '',
 			detail: '',
 			mend: undefined,
