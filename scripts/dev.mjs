@@ -34,11 +34,16 @@ await main(async () => {
 		});
 		await prepareDatabase(settings, process.env, join(FOLDER, 'cli'));
 		const { createServer } = await import('vite');
+		const ours = process.listeners('SIGTERM');
 		server = await createServer({
 			root: ROOT,
 			plugins: [planishWorkers(join(FOLDER, 'workers'))],
 			server: { host: settings.host, port: settings.port, strictPort: true }
 		});
+		// Vite's own handler would end the process before PostgreSQL is stopped.
+		for (const listener of process.listeners('SIGTERM')) {
+			if (!ours.includes(listener)) process.off('SIGTERM', listener);
+		}
 		await server.listen();
 		server.printUrls();
 		for (const { role, email, password } of demoAccounts(settings.data)) say(`    ${role}  ${email}  ${password}`);

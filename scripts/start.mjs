@@ -93,6 +93,12 @@ function announce({ url, origin, originGiven, host, data }, database, server) {
 	say(`Data:    ${data}`);
 	say(`         ${database.where}`);
 	say(`         server log ${server.log}`);
+	const loopback = host === 'localhost' || host === '::1' || host.startsWith('127.');
+	if (!loopback && accounts.length > 0) {
+		say(
+			"Others can reach this address, and the demo's passwords are no secret: change them, or start with PLANISH_DEMO=none."
+		);
+	}
 	if (!originGiven && (host === '0.0.0.0' || host === '::')) {
 		say(`People who come by another address than ${url} can sign in only when ORIGIN is set to the address they type.`);
 	}
