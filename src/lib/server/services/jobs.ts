@@ -91,7 +91,7 @@ export async function cancelJob(id: string, actor: Actor): Promise<Job> {
  */
 export async function* watchJob(id: string, signal?: AbortSignal): AsyncGenerator<Job, void> {
 	const { listener } = jobsRuntime();
-	let changed = false;
+	let changed: boolean;
 	let ring = () => {};
 	const end = listener.on('planish_jobs', (told) => {
 		if (told !== null && told !== id) return;
