@@ -79,6 +79,26 @@ export function validateQuery<S extends z.ZodType>(schema: S, query: URLSearchPa
 	return validate(schema, Object.fromEntries(query), 'The query is not valid');
 }
 
+/** How long the rest of a refused body is still taken, ms. */
+const LINGER_MS = 30_000;
+
+/**
+ * Takes what a refused call still sends and throws it away: a connection with an unread body would stall its next request,
+ * and closing it at once would take the refusal with it. Reads at most for LINGER_MS, then closes.
+ */
+export async function discardRest(request: Request): Promise<void> {
+	if (!request.body || request.body.locked) return;
+	const reader = request.body.getReader();
+	const late = setTimeout(() => void reader.cancel().catch(() => undefined), LINGER_MS);
+	try {
+		while (!(await reader.read()).done);
+	} catch {
+		// The caller hung up: nothing is left to take.
+	} finally {
+		clearTimeout(late);
+	}
+}
+
 /** The body's bytes as text, read no further than the limit. */
 async function readText(request: Request): Promise<string> {
 	const tooLarge = () =>
@@ -88,10 +108,15 @@ async function readText(request: Request): Promise<string> {
 	if (Number(request.headers.get('content-length') ?? 0) > JSON_LIMIT) throw tooLarge();
 	const chunks: Uint8Array[] = [];
 	let size = 0;
-	for await (const chunk of request.body ?? []) {
-		size += chunk.byteLength;
-		if (size > JSON_LIMIT) throw tooLarge();
-		chunks.push(chunk);
+	const reader = request.body?.getReader();
+	try {
+		for (let part = await reader?.read(); part && !part.done; part = await reader?.read()) {
+			size += part.value.byteLength;
+			if (size > JSON_LIMIT) throw tooLarge();
+			chunks.push(part.value);
+		}
+	} finally {
+		reader?.releaseLock();
 	}
 	try {
 		return new TextDecoder('utf-8', { fatal: true }).decode(Buffer.concat(chunks));
