@@ -67,8 +67,12 @@ function describe(name: string, operation: Operation, parts: Record<string, Json
 
 function build(): Record<string, unknown> {
 	const rows = Object.entries(operations) as [string, Operation][];
+	// Their properties become parameters one by one.
+	const queries = new Set<unknown>(rows.map(([, { query }]) => query));
 	const { components, inline } = componentsOf(
-		Object.entries(schemas).flatMap(([name, value]) => (value instanceof z.ZodType ? [[name, value] as const] : [])),
+		Object.entries(schemas).flatMap(([name, value]) =>
+			value instanceof z.ZodType && !queries.has(value) ? [[name, value] as const] : []
+		),
 		rows.flatMap(([name, { query, body, answer }]) => [
 			...(query ? [{ key: `${name}.query`, schema: query, io: 'input' as const }] : []),
 			...(body instanceof z.ZodType ? [{ key: `${name}.body`, schema: body, io: 'input' as const }] : []),
