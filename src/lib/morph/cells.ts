@@ -25,15 +25,15 @@ export interface CellGrid {
 
 /** Vertices taken together by the moment kernel. */
 const BLOCK = 4;
-const CELL_STEPS = [1, 2, 4, 6, 8, 12, 16, 24, 32, 48, 64, 96, 128];
-const ORDERS = [5, 7, 9];
+const CELL_STEPS = [1, 2, 4, 6, 8, 12, 16, 20, 24, 32, 40, 48, 64, 80, 96, 128];
+const ORDERS = [4, 5, 6, 7, 8, 9];
 /**
  * Bound of the truncation, relative to polynomials of largest value 1: for the metric, and for moves and gradients. The
- * bound adds the largest coefficients of all polynomials and cells; what is really lost is some thousand times less
+ * bound adds the largest coefficients of all polynomials and cells; what is really lost is a hundred times less and more
  * (tests/unit/morph/cells.test.ts).
  */
-export const METRIC_TOLERANCE = 3e-7;
-export const FIELD_TOLERANCE = 5e-9;
+export const METRIC_TOLERANCE = 2e-9;
+export const FIELD_TOLERANCE = 2e-11;
 
 /**
  * The cheapest cell grid that meets the tolerances for lattice degrees (by axis) and the metric's doubled degrees, or
@@ -141,95 +141,73 @@ export function gridExpansions(
 }
 
 /**
- * Values of the kept products T_a(x) T_b(y) T_c(z), c fastest, at one vertex, for order 5: the loops of
- * chebyshevProducts written out, which halves their time.
+ * How a cell's terms T_a(x) T_b(y) T_c(z) with a + b + c <= order are laid out: by c, and within c by pairs (a, b) of
+ * rising a + b. So the pairs that go with c are the first `counts[c]` ones, and each c follows from the two before it by
+ * one recurrence over whole runs.
  */
-function fifthOrderProducts(x: number, y: number, z: number, out: Float64Array): void {
-	const x2 = 2 * x;
-	const y2 = 2 * y;
-	const z2 = 2 * z;
-	const tz2 = z2 * z - 1;
-	const tz3 = z2 * tz2 - z;
-	const tz4 = z2 * tz3 - tz2;
-	const tz5 = z2 * tz4 - tz3;
-	const ty2 = y2 * y - 1;
-	const ty3 = y2 * ty2 - y;
-	const ty4 = y2 * ty3 - ty2;
-	const ty5 = y2 * ty4 - ty3;
-	let tx = 1;
-	let next = x;
-	let l = 0;
-	for (let left = 5; left >= 0; left--) {
-		out[l++] = tx;
-		if (left > 0) out[l++] = tx * z;
-		if (left > 1) out[l++] = tx * tz2;
-		if (left > 2) out[l++] = tx * tz3;
-		if (left > 3) out[l++] = tx * tz4;
-		if (left > 4) out[l++] = tx * tz5;
-		if (left > 0) {
-			const f = tx * y;
-			out[l++] = f;
-			if (left > 1) out[l++] = f * z;
-			if (left > 2) out[l++] = f * tz2;
-			if (left > 3) out[l++] = f * tz3;
-			if (left > 4) out[l++] = f * tz4;
-		}
-		if (left > 1) {
-			const f = tx * ty2;
-			out[l++] = f;
-			if (left > 2) out[l++] = f * z;
-			if (left > 3) out[l++] = f * tz2;
-			if (left > 4) out[l++] = f * tz3;
-		}
-		if (left > 2) {
-			const f = tx * ty3;
-			out[l++] = f;
-			if (left > 3) out[l++] = f * z;
-			if (left > 4) out[l++] = f * tz2;
-		}
-		if (left > 3) {
-			const f = tx * ty4;
-			out[l++] = f;
-			if (left > 4) out[l++] = f * z;
-		}
-		if (left > 4) out[l++] = tx * ty5;
-		const after = left === 5 ? x2 * x - 1 : x2 * next - tx;
-		tx = next;
-		next = after;
-	}
+interface TermLayout {
+	order: number;
+	terms: number;
+	pairA: Uint8Array;
+	pairB: Uint8Array;
+	/** Place of each pair when they are counted with b fastest, as columns are laid out. */
+	slot: Uint8Array;
+	/** Pairs that go with each c. */
+	counts: Uint32Array;
+	/** First term of each c. */
+	offsets: Uint32Array;
 }
 
-/** Values of the kept products T_a(x) T_b(y) T_c(z), c fastest, at one vertex. */
-function chebyshevProducts(
-	order: number,
+function termLayout(order: number): TermLayout {
+	const pairs = ((order + 1) * (order + 2)) / 2;
+	const pairA = new Uint8Array(pairs);
+	const pairB = new Uint8Array(pairs);
+	const slot = new Uint8Array(pairs);
+	for (let total = 0, l = 0; total <= order; total++) {
+		for (let b = 0; b <= total; b++, l++) {
+			const a = total - b;
+			pairA[l] = a;
+			pairB[l] = b;
+			slot[l] = a * (order + 1) - (a * (a - 1)) / 2 + b;
+		}
+	}
+	const counts = Uint32Array.from({ length: order + 1 }, (_, c) => ((order - c + 1) * (order - c + 2)) / 2);
+	const offsets = new Uint32Array(order + 1);
+	for (let c = 1; c <= order; c++) offsets[c] = offsets[c - 1] + counts[c - 1];
+	return { order, terms: offsets[order] + counts[order], pairA, pairB, slot, counts, offsets };
+}
+
+/** Values of a cell's terms at one vertex. */
+function termValues(
+	layout: TermLayout,
 	x: number,
 	y: number,
 	z: number,
 	tx: Float64Array,
 	ty: Float64Array,
-	tz: Float64Array,
 	out: Float64Array
 ): void {
-	if (order === 5) {
-		fifthOrderProducts(x, y, z, out);
-		return;
-	}
-	tx[0] = ty[0] = tz[0] = 1;
+	const { order, pairA, pairB, counts, offsets } = layout;
+	tx[0] = ty[0] = 1;
 	tx[1] = x;
 	ty[1] = y;
-	tz[1] = z;
+	const x2 = 2 * x;
+	const y2 = 2 * y;
+	const z2 = 2 * z;
 	for (let k = 2; k <= order; k++) {
-		tx[k] = 2 * x * tx[k - 1] - tx[k - 2];
-		ty[k] = 2 * y * ty[k - 1] - ty[k - 2];
-		tz[k] = 2 * z * tz[k - 1] - tz[k - 2];
+		tx[k] = x2 * tx[k - 1] - tx[k - 2];
+		ty[k] = y2 * ty[k - 1] - ty[k - 2];
 	}
-	let l = 0;
-	for (let a = 0; a <= order; a++) {
-		const fa = tx[a];
-		for (let b = 0; b <= order - a; b++) {
-			const fab = fa * ty[b];
-			for (let c = 0; c <= order - a - b; c++) out[l++] = fab * tz[c];
-		}
+	const pairs = counts[0];
+	for (let l = 0; l < pairs; l++) out[l] = tx[pairA[l]] * ty[pairB[l]];
+	const second = order > 0 ? counts[1] : 0;
+	for (let l = 0; l < second; l++) out[pairs + l] = z * out[l];
+	for (let c = 2; c <= order; c++) {
+		const at = offsets[c];
+		const before = offsets[c - 1];
+		const twice = offsets[c - 2];
+		const count = counts[c];
+		for (let l = 0; l < count; l++) out[at + l] = z2 * out[before + l] - out[twice + l];
 	}
 }
 
@@ -238,8 +216,7 @@ function makeScratch(order: number, terms: number) {
 	return {
 		phi: Array.from({ length: BLOCK }, () => new Float64Array(terms)),
 		tx: new Float64Array(order + 2),
-		ty: new Float64Array(order + 2),
-		tz: new Float64Array(order + 2)
+		ty: new Float64Array(order + 2)
 	};
 }
 
@@ -325,6 +302,7 @@ function gatherBlock(
 
 /** One group of three: cell sums (terms x 3) to the column's polynomials in w (pairs x functions_w x 3). */
 function spreadCell(
+	layout: TermLayout,
 	column: Float64Array,
 	columnStart: number,
 	columnStride: number,
@@ -332,25 +310,22 @@ function spreadCell(
 	cellStart: number,
 	coefficients: Float64Array,
 	coefficientStart: number,
-	functions: number,
-	size: number
+	functions: number
 ): void {
-	let to = columnStart;
+	const { order, slot, counts } = layout;
 	let m = cellStart;
-	for (let a = 0; a < size; a++) {
-		for (let b = 0; b < size - a; b++, to += columnStride) {
-			const count = size - a - b;
-			for (let c = 0; c < count; c++, m += 3) {
-				const m0 = cell[m];
-				const m1 = cell[m + 1];
-				const m2 = cell[m + 2];
-				const from = coefficientStart + c * functions;
-				for (let k = 0, at = to; k < functions; k++, at += 3) {
-					const f = coefficients[from + k];
-					column[at] += m0 * f;
-					column[at + 1] += m1 * f;
-					column[at + 2] += m2 * f;
-				}
+	for (let c = 0; c <= order; c++) {
+		const from = coefficientStart + c * functions;
+		const count = counts[c];
+		for (let l = 0; l < count; l++, m += 3) {
+			const m0 = cell[m];
+			const m1 = cell[m + 1];
+			const m2 = cell[m + 2];
+			for (let k = 0, at = columnStart + slot[l] * columnStride; k < functions; k++, at += 3) {
+				const f = coefficients[from + k];
+				column[at] += m0 * f;
+				column[at + 1] += m1 * f;
+				column[at + 2] += m2 * f;
 			}
 		}
 	}
@@ -384,7 +359,8 @@ export function cellMoments(
 	const cell = new Float64Array(terms * sets);
 	const column = new Float64Array(pairs * groups * row);
 	const slab = new Float64Array(size * groups * plane);
-	const { phi, tx, ty, tz } = makeScratch(order, terms);
+	const layout = termLayout(order);
+	const { phi, tx, ty } = makeScratch(order, terms);
 	for (let o = 0; o < keys.length; o++) {
 		const key = keys[o];
 		const c0 = key % cw;
@@ -394,7 +370,7 @@ export function cellMoments(
 			const here = Math.min(BLOCK, last - i);
 			for (let q = 0; q < here; q++) {
 				const at = 3 * (i + q);
-				chebyshevProducts(order, local[at], local[at + 1], local[at + 2], tx, ty, tz, phi[q]);
+				termValues(layout, local[at], local[at + 1], local[at + 2], tx, ty, phi[q]);
 			}
 			// Four vertices at a time, so that each sum is read and written once for four products.
 			const i0 = sets * sorted[i];
@@ -406,7 +382,7 @@ export function cellMoments(
 			}
 		}
 		for (let g = 0; g < groups; g++) {
-			spreadCell(column, g * row, groups * row, cell, 3 * g * terms, ew.coefficients, c0 * size * nw, nw, size);
+			spreadCell(layout, column, g * row, groups * row, cell, 3 * g * terms, ew.coefficients, c0 * size * nw, nw);
 		}
 		// Close the column, and the slab, when the next cell lies in another one.
 		const line = (key - c0) / cw;
@@ -453,34 +429,32 @@ function collect(
 
 /** The transpose of spreadCell: the cell's terms x 3 from the column's polynomials in w. */
 function collectCell(
+	layout: TermLayout,
 	cell: Float64Array,
 	column: Float64Array,
 	columnStride: number,
 	coefficients: Float64Array,
 	coefficientStart: number,
-	functions: number,
-	size: number
+	functions: number
 ): void {
-	let base = 0;
+	const { order, slot, counts } = layout;
 	let m = 0;
-	for (let a = 0; a < size; a++) {
-		for (let b = 0; b < size - a; b++, base += columnStride) {
-			const count = size - a - b;
-			for (let c = 0; c < count; c++, m += 3) {
-				const from = coefficientStart + c * functions;
-				let x = 0;
-				let y = 0;
-				let z = 0;
-				for (let k = 0, at = base; k < functions; k++, at += 3) {
-					const f = coefficients[from + k];
-					x += f * column[at];
-					y += f * column[at + 1];
-					z += f * column[at + 2];
-				}
-				cell[m] = x;
-				cell[m + 1] = y;
-				cell[m + 2] = z;
+	for (let c = 0; c <= order; c++) {
+		const from = coefficientStart + c * functions;
+		const count = counts[c];
+		for (let l = 0; l < count; l++, m += 3) {
+			let x = 0;
+			let y = 0;
+			let z = 0;
+			for (let k = 0, at = slot[l] * columnStride; k < functions; k++, at += 3) {
+				const f = coefficients[from + k];
+				x += f * column[at];
+				y += f * column[at + 1];
+				z += f * column[at + 2];
 			}
+			cell[m] = x;
+			cell[m + 1] = y;
+			cell[m + 2] = z;
 		}
 	}
 }
@@ -525,7 +499,8 @@ export function cellValues(
 	const slab = new Float64Array(size * plane);
 	const column = new Float64Array(pairs * row);
 	const cell = new Float64Array(3 * terms);
-	const { phi, tx, ty, tz } = makeScratch(order, terms);
+	const layout = termLayout(order);
+	const { phi, tx, ty } = makeScratch(order, terms);
 	let columnKey = -1;
 	let slabKey = -1;
 	for (let o = 0; o < keys.length; o++) {
@@ -549,9 +524,9 @@ export function cellValues(
 				}
 			}
 		}
-		collectCell(cell, column, row, ew.coefficients, c0 * size * nw, nw, size);
+		collectCell(layout, cell, column, row, ew.coefficients, c0 * size * nw, nw);
 		for (let i = starts[o]; i < starts[o + 1]; i++) {
-			chebyshevProducts(order, local[3 * i], local[3 * i + 1], local[3 * i + 2], tx, ty, tz, phi[0]);
+			termValues(layout, local[3 * i], local[3 * i + 1], local[3 * i + 2], tx, ty, phi[0]);
 			valueAt(out, 3 * sorted[i], phi[0], cell, terms);
 		}
 	}

@@ -3,6 +3,7 @@ export { MorphError, type MorphErrorCode, type MorphPlace } from './errors';
 export type * from './types';
 export { readStl, type ReadStlOptions } from './stl-read';
 export { binaryKeepsPatchNames, stlByteLength, stlChunks, writeStl, type WriteStlOptions } from './stl-write';
+export { float32Text } from './float-text';
 export { weldTriangles } from './weld';
 export { surfaceMeasures } from './measures';
 export { geometry, makeSurface, meshToSurface, toMetres, volumeGradient, volumeOf } from './surface';
