@@ -16,7 +16,7 @@ import { isForged } from '$lib/server/auth/csrf';
 import { identifySession, identifyToken } from '$lib/server/auth/identify';
 import { AppError } from '$lib/server/errors';
 import { secured } from '$lib/server/http/headers';
-import { problemResponse } from '$lib/server/http/problem';
+import { refuse } from '$lib/server/http/problem';
 import { startServing } from '$lib/server/lifecycle';
 import { log } from '$lib/server/log';
 
@@ -59,7 +59,7 @@ const refuseForged: Handle = ({ event, resolve }) => {
 		? 'Programs send an API token instead of a session.'
 		: 'Open Planish by its own address; behind a proxy, whoever runs it sets ORIGIN to the public one.';
 	if (event.route.id && !isApi(event)) error(403, `${detail} ${mend}`);
-	return problemResponse(new AppError('cross-site', detail, { mend }));
+	return refuse(request, new AppError('cross-site', detail, { mend }));
 };
 
 const identify: Handle = async ({ event, resolve }) => {
@@ -73,7 +73,7 @@ const identify: Handle = async ({ event, resolve }) => {
 		const identity = bearer === null ? claim && (await identifySession(claim)) : await identifyToken(bearer);
 		if (identity) Object.assign(event.locals, identity);
 	} catch (thrown) {
-		if (isApi(event) || thrown instanceof AppError) return problemResponse(thrown);
+		if (isApi(event) || thrown instanceof AppError) return refuse(event.request, thrown);
 		throw thrown;
 	}
 	return resolve(event);
@@ -94,7 +94,8 @@ const explainMethods: Handle = async ({ event, resolve }) => {
 	const response = await resolve(event);
 	if (!isApi(event) || response.status !== 405) return response;
 	const allow = response.headers.get('allow') ?? '';
-	const problem = problemResponse(
+	const problem = refuse(
+		event.request,
 		new AppError('method-not-allowed', `${event.url.pathname} takes ${allow}, not ${event.request.method}.`)
 	);
 	problem.headers.set('allow', allow);

@@ -9,8 +9,8 @@ import type { Role } from '$lib/api/schemas';
 import type { Caller, SignedInUser, StudyAccess } from '../auth/caller';
 import { AppError } from '../errors';
 import { findStudyAccess, type StudySubject } from '../repositories/access';
-import { discardRest, isUuid, readJson, validateBody, validateQuery } from './input';
-import { problemResponse } from './problem';
+import { isUuid, readJson, validateBody, validateQuery } from './input';
+import { problemResponse, refuse } from './problem';
 
 type PathNames<P extends string> = P extends `${string}{${infer N}}${infer Rest}` ? N | PathNames<Rest> : never;
 
@@ -124,8 +124,7 @@ export function handle<const O extends Operation>(
 			if (isRedirect(thrown) || isHttpError(thrown)) throw thrown;
 			// Nobody reads this answer: it keeps the broken stream of an upload that was called off out of the log's errors.
 			if (event.request.signal.aborted) return problemResponse(new AppError('cancelled', 'The caller hung up.'));
-			void discardRest(event.request);
-			return problemResponse(thrown);
+			return refuse(event.request, thrown);
 		}
 	};
 }

@@ -1,4 +1,5 @@
 import { asAppError, toProblem } from '../errors';
+import { discardRest } from './input';
 
 /** An RFC 9457 answer for whatever was thrown. */
 export function problemResponse(thrown: unknown): Response {
@@ -7,4 +8,10 @@ export function problemResponse(thrown: unknown): Response {
 	if (error.status === 401) headers.set('www-authenticate', 'Bearer realm="Planish"');
 	if (error.retryAfter !== undefined) headers.set('retry-after', String(Math.ceil(error.retryAfter)));
 	return new Response(JSON.stringify(toProblem(error)), { status: error.status, headers });
+}
+
+/** The same for a request whose body nobody has read to its end. */
+export function refuse(request: Request, thrown: unknown): Response {
+	void discardRest(request);
+	return problemResponse(thrown);
 }
