@@ -181,7 +181,7 @@ export async function readWhole(id: string): Promise<Uint8Array<ArrayBuffer>> {
 	return whole;
 }
 
-/** Takes contents away inside the caller's transaction; call sweep() after it to free their chunks. */
+/** Takes contents away inside the caller's transaction; chunks that somebody is about to share go with the next sweep. */
 export async function removeContents(ids: string[], tx: Tx): Promise<void> {
 	await contents.deleteContents(ids, tx);
 }

@@ -1,5 +1,5 @@
 /** How a job ends or waits again. Every change locks the job's row first and leaves alone what is no longer as it was. */
-import { removeContents, sweep } from '../content/store';
+import { removeContents } from '../content/store';
 import { AppError, toProblem } from '../errors';
 import { log } from '../log';
 import * as jobs from '../repositories/jobs';
@@ -22,11 +22,6 @@ async function endEmpty(job: { id: string; payload: Record<string, unknown> }, e
 	await removeContents(uploadOf(job.payload), tx);
 }
 
-/** The chunks go later if somebody is storing just now: the next sweep takes them. */
-export async function tidy(): Promise<void> {
-	await sweep().catch((error) => log.warn({ err: error }, 'unnamed chunks could not be swept'));
-}
-
 const cancelledEnding = { state: 'cancelled', message: 'Cancelled' } as const;
 
 /** The job's own worker says that it was refused or failed. */
@@ -36,7 +31,6 @@ export async function failJob(job: jobs.ClaimedJob, thrown: unknown): Promise<vo
 		if (!(await jobs.holdJob(job, tx))) return;
 		await endEmpty({ id: job.jobId, payload: job.payload }, { state: 'failed', message: error.title, error }, tx);
 	});
-	await tidy();
 }
 
 /** The job's own worker has stopped because it was told to. */
@@ -44,7 +38,6 @@ export async function endCancelled(job: jobs.ClaimedJob): Promise<void> {
 	await inTransaction(async (tx) => {
 		if (await jobs.holdJob(job, tx)) await endEmpty({ id: job.jobId, payload: job.payload }, cancelledEnding, tx);
 	});
-	await tidy();
 }
 
 /** Gives a job back that its worker did not finish, through no fault of the job. */

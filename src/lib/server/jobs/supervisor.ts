@@ -3,11 +3,12 @@ import { randomUUID } from 'node:crypto';
 import { hostname } from 'node:os';
 import { setTimeout as sleep } from 'node:timers/promises';
 import type { Listener } from '../db/listener';
+import { sweep } from '../content/store';
 import { AppError } from '../errors';
 import { log } from '../log';
 import { beat, claimJob, type ClaimedJob } from '../repositories/jobs';
 import { Control } from './control';
-import { endCancelled, failJob, giveBack, rescueJobs, tidy } from './lifecycle';
+import { endCancelled, failJob, giveBack, rescueJobs } from './lifecycle';
 import type { ThreadOutcome } from './protocol';
 import { QUEUE, type Queue } from './queue';
 import type { Threads } from './threads';
@@ -47,7 +48,7 @@ export class Supervisor {
 			turn();
 		};
 		every(RESCUE_MS, () => rescueJobs(this.queue, QUEUE, new Set(this.#running.keys())));
-		every(SWEEP_MS, tidy);
+		every(SWEEP_MS, sweep);
 	}
 
 	#ring() {

@@ -80,17 +80,28 @@ export async function chunkHashes(contentId: string): Promise<string[]> {
 	return rows.map((row) => row.sha256.toString('hex'));
 }
 
-/** Takes contents away; their blobs go with the next sweep. One that a shape, map or move names stays (foreign keys). */
+/**
+ * Takes contents away, and with them the blobs that no other content names. One that a shape, map or move names stays (foreign
+ * keys refuse it).
+ */
 export async function deleteContents(ids: string[], tx: Tx): Promise<void> {
-	if (ids.length > 0) await ContentModel.destroy({ where: { id: ids }, transaction: tx });
+	if (ids.length === 0) return;
+	const rows = await database().query<{ sha256: Buffer }>(
+		'SELECT DISTINCT sha256 FROM content_chunks WHERE content_id = ANY($1::uuid[])',
+		{ bind: [ids], transaction: tx, type: QueryTypes.SELECT }
+	);
+	await ContentModel.destroy({ where: { id: ids }, transaction: tx });
+	const hashes = rows.map((row) => row.sha256);
+	await deleteUnnamedBlobs(tx, hashes);
 }
 
 /**
  * Removes blobs that no content names. Does nothing while somebody stores, since a writer may be about to name one.
  *
+ * @param hashes only these are looked at
  * @returns how many were removed, or null when it was not the moment
  */
-export async function deleteUnnamedBlobs(tx: Tx): Promise<number | null> {
+export async function deleteUnnamedBlobs(tx: Tx, hashes?: Buffer[]): Promise<number | null> {
 	const [lock] = await database().query<{ free: boolean }>('SELECT pg_try_advisory_xact_lock($1) AS free', {
 		bind: [STORE_LOCK],
 		transaction: tx,
@@ -98,8 +109,9 @@ export async function deleteUnnamedBlobs(tx: Tx): Promise<number | null> {
 	});
 	if (!lock.free) return null;
 	const rows = await database().query(
-		`DELETE FROM blobs b WHERE NOT EXISTS (SELECT FROM content_chunks c WHERE c.sha256 = b.sha256) RETURNING size`,
-		{ transaction: tx, type: QueryTypes.SELECT }
+		`DELETE FROM blobs b WHERE NOT EXISTS (SELECT FROM content_chunks c WHERE c.sha256 = b.sha256)
+			${hashes ? 'AND b.sha256 = ANY($1::bytea[])' : ''} RETURNING size`,
+		{ bind: hashes && [hashes], transaction: tx, type: QueryTypes.SELECT }
 	);
 	return rows.length;
 }

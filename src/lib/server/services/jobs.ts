@@ -4,7 +4,6 @@ import type { Job } from '$lib/api/schemas';
 import type { Actor } from '../auth/caller';
 import { removeContents } from '../content/store';
 import { AppError } from '../errors';
-import { tidy } from '../jobs/lifecycle';
 import { jobsRuntime } from '../jobs/runtime';
 import { recordEvent } from '../repositories/audit';
 import * as jobs from '../repositories/jobs';
@@ -79,7 +78,6 @@ export async function cancelJob(id: string, actor: Actor): Promise<Job> {
 		}
 		await recordEvent(tx, actor, { studyId: row.studyId, action: 'job.cancelled', subjectId: id });
 	});
-	await tidy();
 	return getJob(id);
 }
 
