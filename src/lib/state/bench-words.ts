@@ -1,0 +1,43 @@
+/** What the Bench says about boxes, fields and checks. */
+import type { Box, Held, Objective } from '$lib/api/schemas';
+import { axisOf, boxAxis, faceNames, sideOf, type FaceName, type Placement } from './bench-geometry';
+
+/** Planes of control points held at a face, as the surface feels it. */
+export const heldNames = ['free', 'joined', 'tangent kept', 'curvature kept'] as const;
+
+export const latticeWords = (box: Pick<Box, 'lattice'>) => box.lattice.join(' × ');
+
+/** Where a face of a box looks, by the frame's nearest axis: `towards −x`. */
+export function towards(box: Placement, face: FaceName): string {
+	const axis = boxAxis(box, axisOf(face)).map((a) => a * sideOf(face));
+	const k = axis.reduce((best, a, i) => (Math.abs(a) > Math.abs(axis[best]) ? i : best), 0);
+	return `towards ${axis[k] < 0 ? '\u2212' : '+'}${'xyz'[k]}`;
+}
+
+/** `−x face tangent kept`, `2 faces held`, `no face held` */
+export function heldWords(box: Placement & { held: Held }): string {
+	const held = faceNames.filter((f) => box.held[f] > 0);
+	if (held.length === 0) return 'no face held';
+	if (held.length > 1) return `${held.length} faces held`;
+	return `${towards(box, held[0]).replace('towards ', '')} face ${heldNames[box.held[held[0]]]}`;
+}
+
+/** `N per mm per m²`; a coefficient has no unit of its own. */
+export function densityUnit(objective: Objective | undefined): string {
+	const unit = objective?.unit;
+	return `${unit && unit !== '1' ? `${unit} ` : ''}per mm per m²`;
+}
+
+export const checkNames: Record<string, string> = {
+	flipped: 'Flipped triangles',
+	minAngle: 'Smallest angle'
+};
+
+/** A check's name in words, also one that this page has not met. */
+export const checkName = (key: string) =>
+	checkNames[key] ??
+	key.charAt(0).toUpperCase() +
+		key
+			.slice(1)
+			.replace(/([A-Z])/g, ' $1')
+			.toLowerCase();

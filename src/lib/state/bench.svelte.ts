@@ -1,0 +1,323 @@
+import { getContext, setContext } from 'svelte';
+import { ApiProblem, apiPath, asProblem, problemFromText } from '$lib/api/client';
+import type { Box, BoxCreate, SensitivityMap, Shape, ShapeSummary, Study } from '$lib/api/schemas';
+import { metresPerUnit } from '$lib/format/units';
+import { DisplayWorker } from '$lib/workers/display';
+import type {
+	DisplayField,
+	DisplayMesh,
+	DisplayMove,
+	FieldName,
+	Pick,
+	Share,
+	Vec3
+} from '$lib/workers/display-protocol';
+import { designBox, roundTo, type Ray } from './bench-geometry';
+import { BoxesState } from './bench-boxes.svelte';
+import { MoveState, type Preview } from './bench-move.svelte';
+
+export type Layer = FieldName | 'none';
+export type Exaggeration = 1 | 5 | 20;
+export const exaggerations: Exaggeration[] = [1, 5, 20];
+
+const PER_MM = 1e-3;
+export const HISTOGRAM_BINS = 48;
+/** The legend's bar reaches this far past the robust limit, so that the limit can be dragged outward too. */
+const LEGEND_REACH = 1.5;
+
+export interface Histogram {
+	field: FieldName;
+	extent: number;
+	shares: Float32Array;
+}
+
+/** Everything that the Bench of one study shows and does. The page hands in what the server says; the viewport looks at it. */
+export class BenchState {
+	study = $state.raw<Study | null>(null);
+	shapes = $state.raw<ShapeSummary[]>([]);
+	shape = $state.raw<Shape | null>(null);
+
+	mesh = $state.raw<DisplayMesh | null>(null);
+	/** Id of the shape whose surface is in `mesh`. */
+	meshOf = $state<string | null>(null);
+	loading = $state(false);
+	problem = $state.raw<ApiProblem | null>(null);
+
+	layer = $state<Layer>('map');
+	mapId = $state<string | null>(null);
+	fields = $state.raw<Partial<Record<FieldName, DisplayField>>>({});
+	/** Set by hand; null: the robust limit. */
+	limits = $state.raw<Partial<Record<FieldName, number>>>({});
+	histogram = $state.raw<Histogram | null>(null);
+
+	moved = $state.raw<DisplayMove | null>(null);
+	showMoved = $state(true);
+	/** While the key for the old surface is held. */
+	peek = $state(false);
+	exaggeration = $state<Exaggeration>(1);
+
+	pick = $state.raw<Pick | null>(null);
+	/** A place of the surface that was clicked: where a new box goes. */
+	pinned = $state.raw<Vec3 | null>(null);
+	share = $state.raw<Share | null>(null);
+	/** While the smoothing length is being set its ring stands on the surface. */
+	ringShown = $state(false);
+	/** A place that the view should go to; a new object each time. */
+	target = $state.raw<{ place: Vec3 } | null>(null);
+
+	readonly boxes: BoxesState;
+	readonly move: MoveState;
+	readonly #worker = new DisplayWorker();
+	#loads = 0;
+	#shareAsked = 0;
+	#settled = false;
+
+	constructor(
+		readonly studyId: string,
+		readonly boxesStored: (list: Box[]) => void
+	) {
+		this.boxes = new BoxesState(
+			studyId,
+			() => this.editable,
+			(list) => this.boxesStored(list)
+		);
+		this.move = new MoveState(
+			() => this.study,
+			() => this.shape,
+			this.boxes,
+			(preview) => void this.#showMove(preview)
+		);
+	}
+
+	readonly editable = $derived(this.study?.role === 'engineer');
+	readonly unit = $derived(this.study?.lengthUnit ?? 'mm');
+	readonly metresPerUnit = $derived(metresPerUnit[this.unit]);
+	readonly map = $derived.by((): SensitivityMap | null => {
+		const maps = this.shape?.maps ?? [];
+		return maps.find((m) => m.id === this.mapId) ?? maps[0] ?? null;
+	});
+	readonly parent = $derived(this.shapes.find((s) => s.id === this.shape?.parentId) ?? null);
+	readonly objectives = $derived(this.study?.objectives ?? []);
+	/** The objective that the page speaks of first: the heaviest of those that are to get better. */
+	readonly mainObjective = $derived.by(() => {
+		const steering = this.objectives.filter((o) => o.sense !== 'hold');
+		return [...steering].sort((a, b) => b.weight - a.weight)[0] ?? this.objectives[0] ?? null;
+	});
+	readonly field = $derived(this.layer === 'none' ? null : (this.fields[this.layer] ?? null));
+	/** Full colour from here on; 0 when nothing is coloured. */
+	readonly limit = $derived.by(() => {
+		if (this.layer === 'none' || !this.field) return 0;
+		return this.limits[this.layer] ?? this.field.spread.robust;
+	});
+	readonly extent = $derived(this.field ? Math.max(this.field.spread.robust * LEGEND_REACH, this.limit) : 0);
+	/** The moved surface is what is to be seen. */
+	readonly movedShown = $derived(this.moved !== null && this.showMoved && !this.peek);
+
+	/** What the server says of the study, whenever it says so anew. */
+	adopt(study: Study, shapes: ShapeSummary[]) {
+		const first = this.study === null;
+		this.study = study;
+		this.shapes = shapes;
+		this.boxes.adopt(study.boxes);
+		if (first) {
+			this.move.boxIds = study.boxes.map((b) => b.id);
+			this.boxes.select(study.boxes[0]?.id ?? null);
+		}
+	}
+
+	/** Goes to a shape: its surface, its map; the settings of the next move stay. */
+	async open(shape: Shape) {
+		const again = this.shape?.id === shape.id && this.meshOf === shape.id;
+		this.shape = shape;
+		if (!this.map || !shape.maps.some((m) => m.id === this.mapId)) this.mapId = shape.maps[0]?.id ?? null;
+		if (again) return this.#loadMap();
+		const load = ++this.#loads;
+		this.loading = true;
+		this.problem = null;
+		this.move.cancel();
+		this.#forgetMove();
+		try {
+			const [positions, triangles] = await Promise.all([
+				bytes(apiPath('getPositions', { id: shape.id })),
+				bytes(apiPath('getTriangles', { id: shape.topologyId }))
+			]);
+			if (load !== this.#loads) return;
+			const scale = this.metresPerUnit;
+			const mesh = await this.#worker.ask('load', { positions, triangles, metresPerUnit: scale }, [positions, triangles]);
+			if (load !== this.#loads) return;
+			this.fields = {};
+			this.histogram = null;
+			this.pick = this.share = null;
+			this.mesh = mesh;
+			this.meshOf = shape.id;
+			if (!this.#settled) this.#settle(mesh);
+			await this.#loadMap();
+			if (this.layer === 'parent') await this.show('parent');
+			else if (this.layer === 'map' && !this.map) this.layer = 'none';
+		} catch (cause) {
+			if (load === this.#loads) this.problem = asProblem(cause);
+		} finally {
+			if (load === this.#loads) this.loading = false;
+		}
+	}
+
+	async show(layer: Layer) {
+		if (layer === 'parent' && !this.fields.parent && this.parent) {
+			const positions = await bytes(apiPath('getPositions', { id: this.parent.id }));
+			await this.#keep('parent', this.#worker.ask('difference', { positions, metresPerUnit: this.metresPerUnit }, [positions]));
+		}
+		this.layer = layer;
+		await this.countHistogram();
+	}
+
+	async showMap(id: string) {
+		this.mapId = id;
+		this.layer = 'map';
+		const { map: _old, ...limits } = this.limits;
+		this.limits = limits;
+		await this.#loadMap(true);
+	}
+
+	setLimit(limit: number | null) {
+		if (this.layer === 'none') return;
+		const { [this.layer]: _old, ...rest } = this.limits;
+		this.limits = limit === null ? rest : { ...rest, [this.layer]: limit };
+	}
+
+	async countHistogram() {
+		const layer = this.layer;
+		const extent = this.extent;
+		if (layer === 'none' || extent === 0) {
+			this.histogram = null;
+			return;
+		}
+		const shares = await this.#worker.ask('histogram', { field: layer, extent, bins: HISTOGRAM_BINS });
+		if (this.layer === layer) this.histogram = { field: layer, extent, shares };
+	}
+
+	async exaggerate(factor: Exaggeration) {
+		this.exaggeration = factor;
+		if (this.moved) this.moved = await this.#worker.ask('exaggerate', { exaggeration: factor });
+	}
+
+	/** What lies under a line of sight; null: nothing. */
+	look(ray: Ray): Promise<Pick | null> {
+		const on = this.movedShown ? 'moved' : 'rest';
+		return this.#worker.ask('pick', { ...ray, on, fields: ['map', 'move', 'parent'] });
+	}
+
+	/** How much of the surface the selected box holds. Only the newest question's answer is shown. */
+	async countShare() {
+		const box = this.boxes.selected;
+		if (!box || !this.mesh) {
+			this.share = null;
+			return;
+		}
+		const asked = ++this.#shareAsked;
+		const share = await this.#worker.ask('share', { box: designBox(box), field: this.fields.map ? 'map' : null });
+		if (asked === this.#shareAsked) this.share = share;
+	}
+
+	/** A new box around a place of the surface, sized from the shape. */
+	async addBox(around: Vec3 | null): Promise<Box | null> {
+		const { mesh, study } = this;
+		if (!mesh || !study || !this.editable) return null;
+		const size = ([0, 1, 2] as const).map((k) => mesh.bounds.max[k] - mesh.bounds.min[k]);
+		const middle = ([0, 1, 2] as const).map((k) => (mesh.bounds.max[k] + mesh.bounds.min[k]) / 2) as Vec3;
+		const longest = Math.max(...size);
+		const least = longest * 0.02;
+		const step = 10 ** Math.floor(Math.log10(longest / 200 / this.metresPerUnit)) * this.metresPerUnit;
+		const rounded = (x: number) => Number(roundTo(x, step).toPrecision(12));
+		const centre = (around ?? middle).map(rounded) as Vec3;
+		const halfSize = size.map((s) => Math.max(least, rounded(Math.min(s * 0.3, longest * 0.18)))) as Vec3;
+		const taken = new Set(this.boxes.list.map((b) => b.name));
+		let n = this.boxes.list.length + 1;
+		while (taken.has(`Box ${n}`)) n++;
+		const body: BoxCreate = {
+			name: `Box ${n}`,
+			centre,
+			halfSize,
+			rotation: [0, 0, 0, 1],
+			lattice: [6, 5, 5],
+			basis: 'bernstein',
+			held: { u0: 0, u1: 0, v0: 0, v1: 0, w0: 0, w1: 0 },
+			axes: ['x', 'y', 'z'],
+			frame: 'box'
+		};
+		const box = await this.boxes.create(body);
+		this.move.use(box.id, true);
+		return box;
+	}
+
+	close() {
+		this.move.cancel();
+		this.#worker.close();
+	}
+
+	/** Step and smoothing that suit the size of what is on the Bench, or those of the move that made it. */
+	#settle(mesh: DisplayMesh) {
+		this.#settled = true;
+		const { min, max } = mesh.bounds;
+		const diagonal = Math.hypot(max[0] - min[0], max[1] - min[1], max[2] - min[2]);
+		const one = (x: number) => Number(x.toPrecision(1));
+		const newest = [...this.shapes].reverse().find((s) => s.step !== null);
+		this.move.step = this.shape?.step ?? newest?.step ?? one(diagonal * 0.002);
+		this.move.smoothing = this.shape?.smoothing ?? newest?.smoothing ?? one(diagonal * 0.012);
+	}
+
+	async #loadMap(again = false) {
+		const map = this.map;
+		if (!map || (this.#mapLoaded === map.id && this.fields.map && !again)) return;
+		this.#mapLoaded = map.id;
+		const values = await bytes(apiPath('getMapValues', { id: map.id }));
+		if (this.map?.id !== map.id) return;
+		await this.#keep('map', this.#worker.ask('map', { values, scale: PER_MM }, [values]));
+		if (this.layer === 'none') this.layer = 'map';
+		await this.countHistogram();
+	}
+	#mapLoaded: string | null = null;
+
+	async #showMove({ boxes, answer }: Preview) {
+		try {
+			const known = answer.lattices.flatMap(({ boxId, displacement }) => {
+				const box = boxes.find((b) => b.id === boxId);
+				return box ? [{ box: designBox(box), lattice: Float64Array.from(displacement) }] : [];
+			});
+			const moved = await this.#worker.ask('move', {
+				boxes: known.map((k) => k.box),
+				lattices: known.map((k) => k.lattice),
+				exaggeration: this.exaggeration
+			});
+			if (this.move.preview?.answer !== answer) return;
+			this.moved = moved;
+			this.fields = { ...this.fields, move: moved.field };
+			if (this.layer === 'move') await this.countHistogram();
+		} catch (cause) {
+			this.problem = asProblem(cause);
+		}
+	}
+
+	#forgetMove() {
+		this.moved = null;
+		this.move.preview = null;
+		const { move: _gone, ...fields } = this.fields;
+		this.fields = fields;
+		if (this.layer === 'move') this.layer = 'map';
+	}
+
+	async #keep(name: FieldName, field: Promise<DisplayField>) {
+		const value = await field;
+		this.fields = { ...this.fields, [name]: value };
+	}
+}
+
+async function bytes(url: string): Promise<ArrayBuffer> {
+	const response = await fetch(url);
+	if (!response.ok) throw problemFromText(response.status, response.statusText, await response.text());
+	return response.arrayBuffer();
+}
+
+const KEY = Symbol('bench');
+
+export const setBench = (bench: BenchState) => setContext(KEY, bench);
+export const getBench = () => getContext<BenchState>(KEY);
