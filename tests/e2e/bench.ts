@@ -29,7 +29,7 @@ export class BenchPage {
 	}
 
 	async boxes(): Promise<void> {
-		await this.sheet.getByRole('button', { name: /^Boxes/ }).click();
+		await this.sheet.getByRole('button', { name: /^Boxes \d/ }).click();
 	}
 
 	async move(): Promise<void> {
@@ -47,7 +47,14 @@ export class BenchPage {
 		await expect(this.sheet.locator('[data-save-state]')).toHaveAttribute('data-save-state', 'saved');
 	}
 
+	/** Previews only when asked, so that a test knows which preview it sees. */
+	get live(): Locator {
+		return this.sheet.getByRole('checkbox', { name: 'Preview as I change things' });
+	}
+
 	async preview(): Promise<void> {
+		await this.live.uncheck();
+		await expect(this.sheet.getByRole('button', { name: 'Cancel preview' })).toHaveCount(0, { timeout: MAKING });
 		await this.sheet.getByRole('button', { name: 'Preview', exact: true }).click();
 		await expect(this.sheet.locator('[data-predicted]')).toBeVisible({ timeout: MAKING });
 	}

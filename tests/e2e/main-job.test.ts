@@ -20,7 +20,7 @@ import {
 } from './support';
 
 const MM = 1e-3;
-test.describe.configure({ mode: 'serial', timeout: 480_000 });
+test.describe.configure({ timeout: 480_000 });
 
 /** Adds what the solver found, on the Ledger. */
 async function addResult(page: Page, shape: RegExp, value: string, uncertainty: string): Promise<void> {
@@ -95,10 +95,10 @@ test('the demo: a third and a fourth cycle by mouse', async ({ page }, info) => 
 	expect(largest).toBeLessThan(0.0026);
 
 	await dialog.getByRole('link', { name: 'Ledger' }).click();
-	await expect(page.getByRole('link', { name: /3 By mouse/ })).toBeVisible();
+	await expect(page.getByRole('link', { name: '3 By mouse', exact: true })).toBeVisible();
 	const found = parent.results[0].value + 0.8 * child.predicted[0].change!;
 	await addResult(page, /^3 /, found.toFixed(2), '0.35');
-	const row = page.getByRole('row').filter({ has: page.getByRole('link', { name: /3 By mouse/ }) });
+	const row = page.getByRole('row').filter({ has: page.getByRole('link', { name: '3 By mouse', exact: true }) });
 	await expect(row).toContainText('judged');
 	await expect(row).toContainText(/0[.,](7[5-9]|8[0-5])/);
 
@@ -109,7 +109,7 @@ test('the demo: a third and a fourth cycle by mouse', async ({ page }, info) => 
 		csvOf(file, (x, _, z) => (z > 100 ? 900 * Math.sin(x / 160) : 0))
 	);
 	await uploadMap(page, /^3 /, map);
-	await row.getByRole('link', { name: /3 By mouse/ }).click();
+	await row.getByRole('link', { name: '3 By mouse', exact: true }).click();
 	await bench.shows(parent.vertexCount);
 	await bench.preview();
 	const fourth = await bench.commit(4, 'Again');
@@ -243,6 +243,9 @@ test('from nothing: the forms by keyboard alone, the box drawn by mouse', async 
 	await keyboard.press('Enter');
 	await enter('Step', '6');
 	await enter('Smoothing length', '40 mm');
+	await tabTo(page, bench.live);
+	await keyboard.press('Space');
+	await expect(bench.sheet.getByRole('button', { name: 'Cancel preview' })).toHaveCount(0);
 	await tabTo(page, bench.sheet.getByRole('button', { name: 'Preview', exact: true }));
 	await keyboard.press('Enter');
 	await expect(bench.sheet.locator('[data-predicted]')).toBeVisible({ timeout: 120_000 });

@@ -85,7 +85,7 @@ for (const colorScheme of ['light', 'dark'] as const) {
 			await page.goto(`/studies/${study}/bench`);
 			const sheet = page.getByRole('complementary', { name: 'Move and boxes' });
 			await expect(page.getByRole('button', { name: 'Design box Tail' })).toBeVisible();
-			await sheet.getByRole('button', { name: /^Boxes/ }).click();
+			await sheet.getByRole('button', { name: /^Boxes \d/ }).click();
 			await page.getByRole('button', { name: 'Design box Tail' }).click();
 			await expect(sheet.getByRole('textbox', { name: 'Points along u' })).toBeVisible();
 			await expectAccessible(page, `Boxes, ${colorScheme}`);

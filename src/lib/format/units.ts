@@ -89,5 +89,6 @@ export function parseLength(text: string, unit: LengthUnit): number {
 	const [, number, suffix] = /^(.*?)\s*([a-zµ"]*)\s*$/i.exec(text) ?? [];
 	if (number === undefined) return NaN;
 	const factor = suffix === '' ? metresPerUnit[unit] : typedUnits[suffix.toLowerCase()];
-	return factor === undefined ? NaN : parseNumber(number) * factor;
+	// 700 mm is 0.7 m, not the product's 0.7000000000000001: a file's recipe should show what was typed.
+	return factor === undefined ? NaN : Number((parseNumber(number) * factor).toPrecision(15));
 }
