@@ -1,4 +1,6 @@
 /** Queries of the content store: blobs, contents and their chunks. */
+import type { Client } from 'pg';
+import { to as copyTo } from 'pg-copy-streams';
 import { QueryTypes } from 'sequelize';
 import { database } from '../db/client';
 import { ContentModel } from '../db/models/content';
@@ -62,13 +64,66 @@ export async function findContent(id: string, tx?: Tx): Promise<ContentRow | nul
 	return row && { id: row.id, sha256: row.sha256, size: Number(row.size), chunkBytes: row.chunkBytes };
 }
 
-/** Chunks with ordinals from `first` to `last` (both included), by ordinal. */
-export function readChunks(contentId: string, first: number, last: number, tx?: Tx): Promise<ChunkRow[]> {
-	return database().query<ChunkRow>(
-		`SELECT c.ordinal, c.sha256, b.bytes FROM content_chunks c LEFT JOIN blobs b USING (sha256)
-			WHERE c.content_id = $1 AND c.ordinal BETWEEN $2 AND $3 ORDER BY c.ordinal`,
-		{ bind: [contentId, first, last], transaction: tx, type: QueryTypes.SELECT }
-	);
+/**
+ * Chunks with ordinals from `first` to `last` (both included), by ordinal; their bytes are views of one buffer. COPY hands the
+ * bytes over as they are, where a query would send them as hexadecimal text: several times the speed.
+ */
+export async function readChunks(contentId: string, first: number, last: number): Promise<ChunkRow[]> {
+	const manager = database().connectionManager as unknown as ClientPool;
+	const client = await manager.getConnection({ type: 'read' });
+	try {
+		// COPY takes no parameters.
+		const stream = client.query(
+			copyTo(
+				`COPY (
+					SELECT c.ordinal, c.sha256, b.bytes FROM content_chunks c LEFT JOIN blobs b USING (sha256)
+						WHERE c.content_id = '${uuid(contentId)}' AND c.ordinal BETWEEN ${Number(first)} AND ${Number(last)}
+						ORDER BY c.ordinal
+				) TO STDOUT (FORMAT binary)`
+			)
+		);
+		const pieces: Buffer[] = [];
+		for await (const piece of stream) pieces.push(piece);
+		return parseCopied(Buffer.concat(pieces)).map(([ordinal, sha256, bytes]) => ({
+			ordinal: ordinal!.readInt32BE(),
+			sha256: sha256!,
+			bytes
+		}));
+	} finally {
+		manager.releaseConnection(client);
+	}
+}
+
+/** Sequelize's pool, which lends out pg's clients; its own types know neither. */
+interface ClientPool {
+	getConnection(options: { type: 'read' }): Promise<Client>;
+	releaseConnection(client: Client): void;
+}
+
+function uuid(id: string): string {
+	if (!/^[0-9a-f]{8}(-[0-9a-f]{4}){3}-[0-9a-f]{12}$/i.test(id)) throw new TypeError(`"${id}" is no UUID.`);
+	return id;
+}
+
+/** Signature (11 bytes), flags and length of the extension (4 each): PostgreSQL manual, COPY, "Binary Format". */
+const COPY_HEADER_BYTES = 19;
+
+/** The rows of COPY's binary format; null for NULL. */
+function parseCopied(bytes: Buffer): (Buffer | null)[][] {
+	const rows: (Buffer | null)[][] = [];
+	let at = COPY_HEADER_BYTES + bytes.readInt32BE(COPY_HEADER_BYTES - 4);
+	for (let fields = bytes.readInt16BE(at); fields >= 0; fields = bytes.readInt16BE(at)) {
+		at += 2;
+		const row: (Buffer | null)[] = [];
+		for (let i = 0; i < fields; i++) {
+			const length = bytes.readInt32BE(at);
+			at += 4;
+			row.push(length < 0 ? null : bytes.subarray(at, at + length));
+			at += Math.max(0, length);
+		}
+		rows.push(row);
+	}
+	return rows;
 }
 
 /** Hashes of all chunks of a content, in hex, by ordinal. */
