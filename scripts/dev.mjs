@@ -4,6 +4,7 @@ import { setTimeout as sleep } from 'node:timers/promises';
 import { appEnvironment, demoAccounts, prepareDatabase } from './lib/app.mjs';
 import { syncTypes } from './lib/build.mjs';
 import { bundle, commandEntries, workerEntries } from './lib/bundles.mjs';
+import { ensurePostgres } from './lib/cluster.mjs';
 import { openDatabase } from './lib/database.mjs';
 import { ensurePackages } from './lib/install.mjs';
 import { claim } from './lib/prepare.mjs';
@@ -23,6 +24,7 @@ await main(async () => {
 	let database;
 	let server;
 	try {
+		if (!process.env.DATABASE_URL) await ensurePostgres(settings.data);
 		await ensurePackages();
 		await syncTypes();
 		await bundle(workerEntries(), join(FOLDER, 'workers'));

@@ -2,6 +2,7 @@
 import { setTimeout as sleep } from 'node:timers/promises';
 import { appEnvironment, demoAccounts, prepareDatabase, startServer } from './lib/app.mjs';
 import { ensureBuilt } from './lib/build.mjs';
+import { ensurePostgres } from './lib/cluster.mjs';
 import { openDatabase } from './lib/database.mjs';
 import { ensurePackages } from './lib/install.mjs';
 import { claim } from './lib/prepare.mjs';
@@ -35,6 +36,7 @@ async function serve(settings, stopping) {
 	/** @type {import('./lib/app.mjs').Server | undefined} */
 	let server;
 	try {
+		if (!process.env.DATABASE_URL) await ensurePostgres(settings.data);
 		await ensurePackages();
 		await ensureBuilt();
 		database = await openDatabase(settings.data);

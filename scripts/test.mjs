@@ -91,8 +91,6 @@ function* plan(stages, folder) {
 	yield [
 		'Preparing',
 		async () => {
-			await ensurePackages();
-			await syncTypes();
 			if (stages.some((stage) => ['reference', 'integration', 'e2e'].includes(stage))) {
 				env.PLANISH_FOREIGN_MESHES = await ensureForeignMeshes();
 			}
@@ -100,6 +98,8 @@ function* plan(stages, folder) {
 				if (!findBinaries()) await installPostgres();
 			}
 			if (stages.includes('e2e')) env.PLANISH_CHROMIUM = await ensureChromium();
+			await ensurePackages();
+			await syncTypes();
 			return { passed: 0, failed: 0 };
 		}
 	];

@@ -13,7 +13,7 @@ import {
 	writeFileSync
 } from 'node:fs';
 import { execFileSync } from 'node:child_process';
-import { createHash, randomBytes } from 'node:crypto';
+import { randomBytes } from 'node:crypto';
 import { dirname, join } from 'node:path';
 import { setTimeout as sleep } from 'node:timers/promises';
 import { installPostgres } from './install.mjs';
@@ -52,7 +52,10 @@ export function findBinaries(version) {
 	return found.length > 0 ? join(INSTALLED, found[0], 'bin') : null;
 }
 
-/** @param {string} folder */
+/**
+ * Finds PostgreSQL's programs for a cluster's folder, and installs them when there are none.
+ * @param {string} folder
+ */
 async function ensureBinaries(folder) {
 	const file = join(folder, 'PG_VERSION');
 	const version = existsSync(file) ? readFileSync(file, 'utf8').trim() : undefined;
@@ -68,6 +71,23 @@ async function ensureBinaries(folder) {
 	const installed = findBinaries(version);
 	if (!installed) throw new Trouble(`PostgreSQL was installed, but ${INSTALLED}/*/bin/initdb is not there.`);
 	return installed;
+}
+
+/**
+ * Says early, before the packages and the build take their minutes, that PostgreSQL is missing and cannot be installed.
+ * @param {string} data
+ */
+export async function ensurePostgres(data) {
+	await ensureBinaries(join(readRecord(data).home ?? join(data, 'postgres'), 'cluster'));
+}
+
+/**
+ * @param {string} data
+ * @returns {{ port?: number, home?: string }} what is remembered of the data folder's cluster
+ */
+export function readRecord(data) {
+	const record = join(data, 'postgres.json');
+	return existsSync(record) ? JSON.parse(readFileSync(record, 'utf8')) : {};
 }
 
 /** PostgreSQL's own commands are short, and stopped halfway they would leave a server that nobody knows of. */
@@ -100,23 +120,26 @@ export async function findCluster(data) {
 	const root = process.getuid?.() === 0;
 	dataFolder(data);
 	const record = join(data, 'postgres.json');
-	const known = existsSync(record) ? JSON.parse(readFileSync(record, 'utf8')) : {};
+	const known = readRecord(data);
 	let home = known.home ?? join(data, 'postgres');
 	const bin = await ensureBinaries(join(home, 'cluster'));
 	let owner = null;
 	if (root) {
 		owner = userNamed('postgres');
-		if (existsSync(home)) {
-			const { uid } = statSync(home);
-			const name = execFileSync('stat', ['-c', '%U', home], { encoding: 'utf8' }).trim();
-			if (uid !== 0 && uid !== owner.uid) owner = userNamed(name);
+		const user = existsSync(home) ? execFileSync('stat', ['-c', '%U', home], { encoding: 'utf8' }).trim() : owner.name;
+		// Root would leave files in that user's data folder which the user cannot read.
+		if (![owner.name, 'root'].includes(user)) {
+			throw new Trouble(
+				`The database in ${home} belongs to the user ${user}. Start as that user: runuser -u ${user} -- npm start`
+			);
 		}
 		// The data folder is ours to open; its parents are not.
 		if ((statSync(data).mode & 0o001) === 0) chmodSync(data, (statSync(data).mode & 0o777) | 0o001);
 		const entered = await run(...asOwner('test', ['-x', dirname(home)], owner), HERE);
 		if (entered.code !== 0) {
-			const name = createHash('sha256').update(data).digest('hex').slice(0, 12);
 			if (known.home) throw new Trouble(`The user ${owner.name} cannot enter ${dirname(home)}, where the database is.`);
+			// Not named after the data folder: a new one of the same name must not meet the old one's database.
+			const name = randomBytes(6).toString('hex');
 			note(
 				`The user ${owner.name}, who runs PostgreSQL, cannot enter ${data}: its database goes to /var/lib/planish/${name}.`
 			);

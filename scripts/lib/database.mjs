@@ -1,7 +1,7 @@
 // The database of a data folder, shared by all commands that use it: the first one starts PostgreSQL, the last one stops it.
-import { existsSync, readdirSync, rmSync, writeFileSync } from 'node:fs';
+import { readdirSync, rmSync, writeFileSync } from 'node:fs';
 import { join } from 'node:path';
-import { ensureDatabase, findCluster, runningServer, startCluster, stopCluster } from './cluster.mjs';
+import { ensureDatabase, findCluster, startCluster, stopCluster } from './cluster.mjs';
 import { readHolder, withLock } from './lock.mjs';
 import { identify, isAlive } from './processes.mjs';
 import { Trouble } from './say.mjs';
@@ -80,15 +80,4 @@ function otherUsers(runFolder) {
 			rmSync(path, { force: true });
 			return false;
 		});
-}
-
-/**
- * Whether the private database of a data folder runs now.
- * @param {string} data
- */
-export function privateDatabaseRuns(data) {
-	const record = join(data, 'postgres.json');
-	if (!existsSync(record)) return false;
-	const home = /** @type {{ home?: string } | null} */ (readHolder(record))?.home ?? join(data, 'postgres');
-	return runningServer({ folder: join(home, 'cluster') }) !== null;
 }

@@ -128,7 +128,7 @@ export async function ensureForeignMeshes() {
 		return FOREIGN_MESHES;
 	}
 	// An ordinary user may still fetch the package and unpack it in a folder of its own.
-	const cache = join(ROOT, 'node_modules', '.cache', 'foreign-meshes');
+	const cache = join(ROOT, '.svelte-kit', 'foreign-meshes');
 	const folder = join(cache, FOREIGN_MESHES);
 	if (existsSync(join(folder, wanted))) return folder;
 	mkdirSync(cache, { recursive: true });
