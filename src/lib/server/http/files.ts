@@ -73,13 +73,17 @@ async function* unread(body: ReadableStream<Uint8Array>): AsyncGenerator<Uint8Ar
 	}
 }
 
-/** Aborted when the caller goes away before the answer is sent. */
-export function callerGone(event: RequestEvent): AbortSignal {
+/** Does some work with a signal that is aborted when the caller goes away before it is done. */
+export async function whileCallerWaits<T>(event: RequestEvent, work: (signal: AbortSignal) => Promise<T>): Promise<T> {
 	const gone = new AbortController();
-	const raw = (event.platform as { req?: IncomingMessage } | undefined)?.req;
-	// request.signal tells only of callers that leave before they have sent everything.
 	const onClose = () => gone.abort();
-	raw?.socket.once('close', onClose);
-	event.request.signal.addEventListener('abort', onClose, { once: true });
-	return gone.signal;
+	// request.signal tells only of callers that leave before they have sent everything.
+	const socket = (event.platform as { req?: IncomingMessage } | undefined)?.req?.socket;
+	socket?.once('close', onClose);
+	try {
+		return await work(AbortSignal.any([gone.signal, event.request.signal]));
+	} finally {
+		// The connection serves more calls after this one.
+		socket?.off('close', onClose);
+	}
 }

@@ -26,6 +26,8 @@ export async function runTask(task: ThreadTask, cache: MeshCache): Promise<Threa
 	// Binds the models, also in a thread whose first query goes through one.
 	database();
 	try {
+		// It may have waited for this thread longer than for its caller.
+		control.check();
 		switch (task.kind) {
 			case 'job':
 				await JOBS[task.job.kind]({ job: task.job, control });

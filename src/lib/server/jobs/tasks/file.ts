@@ -96,7 +96,9 @@ async function* handover({
 	const zip = new JSZip();
 	// One date in all entries, so that the same shape gives the same zip.
 	const date = shape.createdAt;
-	zip.file(stlName, bytes, { date });
+	// Binary coordinates hardly compress; words do.
+	const compression = mesh.encoding === 'binary' ? 'STORE' : 'DEFLATE';
+	zip.file(stlName, bytes, { date, compression });
 	if (shape.move) zip.file('recipe.json', `${JSON.stringify(shape.move.recipe, null, '\t')}\n`, { date });
 	const text = handoverText({
 		study: study!,

@@ -1,8 +1,8 @@
 import { operations } from '$lib/api/contract';
-import { callerGone } from '$lib/server/http/files';
+import { whileCallerWaits } from '$lib/server/http/files';
 import { handle } from '$lib/server/http/handle';
 import { previewMove } from '$lib/server/services/moves';
 
 export const POST = handle(operations.previewMove, ({ params, body, event }) =>
-	previewMove(params.id, body, callerGone(event))
+	whileCallerWaits(event, (signal) => previewMove(params.id, body, signal))
 );
