@@ -157,9 +157,8 @@ export function asAppError(thrown: unknown): AppError {
 	});
 }
 
-/** The RFC 9457 problem for whatever was thrown; requests answer it, jobs store it. Unexpected errors are logged here. */
-export function toProblem(thrown: unknown): Problem {
-	const error = asAppError(thrown);
+/** The RFC 9457 problem that says it. */
+export function problemOf(error: AppError): Problem {
 	return {
 		type: `urn:planish:problem:${error.code}`,
 		title: titleOf(error.code),
@@ -170,3 +169,6 @@ export function toProblem(thrown: unknown): Problem {
 		...(error.errors?.length && { errors: error.errors })
 	};
 }
+
+/** The problem for whatever was thrown; requests answer it, jobs store it. Faults of ours are logged here. */
+export const toProblem = (thrown: unknown): Problem => problemOf(asAppError(thrown));

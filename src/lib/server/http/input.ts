@@ -90,6 +90,8 @@ export async function discardRest(request: Request): Promise<void> {
 	if (!request.body || request.body.locked) return;
 	const reader = request.body.getReader();
 	const late = setTimeout(() => void reader.cancel().catch(() => undefined), LINGER_MS);
+	// A caller who hung up may leave the reading open; the end of the process does not wait for that.
+	late.unref();
 	try {
 		while (!(await reader.read()).done);
 	} catch {

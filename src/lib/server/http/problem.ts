@@ -1,4 +1,4 @@
-import { asAppError, toProblem } from '../errors';
+import { asAppError, problemOf } from '../errors';
 import { discardRest } from './input';
 
 /** An RFC 9457 answer for whatever was thrown. */
@@ -7,7 +7,7 @@ export function problemResponse(thrown: unknown): Response {
 	const headers = new Headers({ 'content-type': 'application/problem+json', 'cache-control': 'no-store' });
 	if (error.status === 401) headers.set('www-authenticate', 'Bearer realm="Planish"');
 	if (error.retryAfter !== undefined) headers.set('retry-after', String(Math.ceil(error.retryAfter)));
-	return new Response(JSON.stringify(toProblem(error)), { status: error.status, headers });
+	return new Response(JSON.stringify(problemOf(error)), { status: error.status, headers });
 }
 
 /** The same for a request whose body nobody has read to its end. */
