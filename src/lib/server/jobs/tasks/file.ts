@@ -109,7 +109,6 @@ async function* handover({
 	});
 	zip.file('README.txt', text, { date });
 	const stream = zip.generateNodeStream({
-		streamFiles: true,
 		compression: 'DEFLATE',
 		compressionOptions: { level: 1 }
 	});
