@@ -35,7 +35,8 @@ export async function runChecks() {
 			const [name, args] = check;
 			const log = join(ROOT, 'test-results', `check-${name}.log`);
 			const begin = Date.now();
-			const { code, output } = await run(process.execPath, args, { cwd: ROOT, log });
+			const env = { ...process.env, NO_COLOR: '1', FORCE_COLOR: '0' };
+			const { code, output } = await run(process.execPath, args, { cwd: ROOT, env, log });
 			const time = `${((Date.now() - begin) / 1000).toFixed(1)} s`;
 			if (code === 0) {
 				counts.passed++;
