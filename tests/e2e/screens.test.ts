@@ -1,5 +1,6 @@
 /** Every screen, light and dark, wide and narrow: axe finds nothing grave, nothing scrolls sideways, the console is quiet. */
 import type { Page } from '@playwright/test';
+import { BenchPage } from './bench';
 import { expect, expectAccessible, expectNoSideways, signIn, test } from './support';
 
 const WIDE = { width: 1440, height: 900 };
@@ -86,13 +87,18 @@ for (const colorScheme of ['light', 'dark'] as const) {
 			const sheet = page.getByRole('complementary', { name: 'Move and boxes' });
 			await expect(page.getByRole('button', { name: 'Design box Tail' })).toBeVisible();
 			await sheet.getByRole('button', { name: /^Boxes \d/ }).click();
-			await page.getByRole('button', { name: 'Design box Tail' }).click();
+			await new BenchPage(page).choose('Tail');
 			await expect(sheet.getByRole('textbox', { name: 'Points along u' })).toBeVisible();
 			await expectAccessible(page, `Boxes, ${colorScheme}`);
 			await page.keyboard.press('Escape');
 			await page.keyboard.press('?');
 			await expect(page.getByRole('dialog', { name: 'Keys of the Bench' })).toBeVisible();
 			await expectAccessible(page, `Keys, ${colorScheme}`);
+			await page.keyboard.press('Escape');
+			await sheet.getByRole('button', { name: 'Next move' }).click();
+			await sheet.getByRole('button', { name: /^Commit shape/ }).click();
+			await expect(page.getByRole('dialog', { name: /^Commit shape/ })).toBeVisible();
+			await expectAccessible(page, `Commit, ${colorScheme}`);
 		});
 
 		test('the administrator’s screen', async ({ page }) => {
