@@ -1,6 +1,6 @@
 /** What the server does once when it starts, and when it ends. */
 import { closeDatabase } from './db/client';
-import { startJobs, stopJobs } from './jobs/runtime';
+import { startJobs, stopJobs, warmPreviews } from './jobs/runtime';
 import { log } from './log';
 
 /**
@@ -14,6 +14,7 @@ export async function startServing(): Promise<void> {
 		throw new Error('AUTH_SECRET is not set; npm start makes one and keeps it in the data folder.');
 	}
 	await startJobs();
+	void warmPreviews();
 	process.once('sveltekit:shutdown', () => {
 		stopJobs()
 			.then(closeDatabase)

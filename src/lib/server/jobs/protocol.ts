@@ -22,7 +22,9 @@ export type ThreadTask =
 	| { kind: 'job'; job: ClaimedJob; control: SharedArrayBuffer }
 	| { kind: 'preview'; shapeId: string; request: RecipeRequest; control: SharedArrayBuffer }
 	/** Pieces of the file go through the port, each asked for by a message; null ends them. */
-	| { kind: 'file'; file: FileRequest; port: MessagePort; control: SharedArrayBuffer };
+	| { kind: 'file'; file: FileRequest; port: MessagePort; control: SharedArrayBuffer }
+	/** Nothing: the thread is there when it has done it. */
+	| { kind: 'warm'; control: SharedArrayBuffer };
 
 export type ThreadOutcome =
 	/** The job's row says what came of it. */

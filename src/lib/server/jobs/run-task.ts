@@ -37,6 +37,8 @@ export async function runTask(task: ThreadTask, cache: MeshCache): Promise<Threa
 			case 'file':
 				await fileTask(task.file, task.port, control);
 				return { outcome: 'done' };
+			case 'warm':
+				return { outcome: 'done' };
 		}
 	} catch (error) {
 		if (error instanceof Stopped) return { outcome: 'stopped', reason: error.reason };

@@ -5,6 +5,7 @@
 import { clearUploads } from '../content/upload';
 import { Listener } from '../db/listener';
 import { log } from '../log';
+import { Control } from './control';
 import { Queue } from './queue';
 import { Supervisor } from './supervisor';
 import { Threads } from './threads';
@@ -56,6 +57,13 @@ export async function startJobs(): Promise<void> {
 	// A server waits for its open answers before it says that it is closing; those of watchers never end by themselves.
 	for (const signal of ['SIGTERM', 'SIGINT'] as const) process.once(signal, () => runtime.closing.abort());
 	log.info({ threads: runtime.supervisor.threads.size }, 'ready for jobs');
+}
+
+/** Starts the preview thread before anybody waits for it: loading its code takes as long as a small preview. */
+export async function warmPreviews(): Promise<void> {
+	await jobsRuntime()
+		.previews.run({ kind: 'warm', control: new Control().buffer })
+		.catch((error) => log.error({ err: error }, 'the preview thread could not be started'));
 }
 
 /** Gives unfinished jobs back and ends the threads and connections of startJobs. */
