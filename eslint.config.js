@@ -94,7 +94,9 @@ export default ts.config(
 			// In Svelte 5 a rune's `let` is what makes it writable.
 			'prefer-const': 'off',
 			// Paths are served from the root; there is no base path to resolve.
-			'svelte/no-navigation-without-resolve': 'off'
+			'svelte/no-navigation-without-resolve': 'off',
+			// Maps and sets are kept raw and replaced, or never leave their function.
+			'svelte/prefer-svelte-reactivity': 'off'
 		}
 	},
 	{ files: ['**/*.cjs'], rules: { '@typescript-eslint/no-require-imports': 'off' } },
