@@ -272,9 +272,8 @@ export function suspectFrame(points: ArrayLike<number>, mesh: HealthMesh, option
 		});
 	}
 	// What differs by less than a few points of the sample is equal, and the simpler one is likelier.
-	fixes.sort((a, b) =>
-		Math.abs(a.after - b.after) > 0.03 ? b.after - a.after : a.changes - b.changes || a.median - b.median
-	);
+	const grade = (fix: FrameFix) => Math.round(30 * fix.after);
+	fixes.sort((a, b) => grade(b) - grade(a) || a.changes - b.changes || a.median - b.median);
 	const best = fixes[0];
 	return fixes.filter((fix, k) => k < 4 && fix.after > best.after - 0.3);
 }

@@ -25,17 +25,19 @@ export interface EdgeTable {
 export function edgeTable(triangles: Uint32Array, vertexCount: number): EdgeTable {
 	const n = triangles.length;
 	const start = new Uint32Array(vertexCount + 1);
-	const ends = (e: number): [number, number] => [triangles[e], triangles[e % 3 === 2 ? e - 2 : e + 1]];
+	const other = (e: number) => triangles[e % 3 === 2 ? e - 2 : e + 1];
 	for (let e = 0; e < n; e++) {
-		const [a, b] = ends(e);
-		if (a !== b) start[Math.min(a, b) + 1]++;
+		const a = triangles[e];
+		const b = other(e);
+		if (a !== b) start[(a < b ? a : b) + 1]++;
 	}
 	for (let v = 0; v < vertexCount; v++) start[v + 1] += start[v];
 	const fill = start.slice(0, vertexCount);
 	const list = new Uint32Array(start[vertexCount]);
 	for (let e = 0; e < n; e++) {
-		const [a, b] = ends(e);
-		if (a !== b) list[fill[Math.min(a, b)]++] = e;
+		const a = triangles[e];
+		const b = other(e);
+		if (a !== b) list[fill[a < b ? a : b]++] = e;
 	}
 	const table: EdgeTable = {
 		opposite: new Int32Array(n).fill(-1),
@@ -47,25 +49,42 @@ export function edgeTable(triangles: Uint32Array, vertexCount: number): EdgeTabl
 		againstCount: 0
 	};
 	const upper = (e: number) => {
-		const [a, b] = ends(e);
+		const a = triangles[e];
+		const b = other(e);
 		return a > b ? a : b;
 	};
 	for (let v = 0; v < vertexCount; v++) {
 		const from = start[v];
 		const to = start[v + 1];
 		if (to === from) continue;
-		// A hub (the tip of a fan) has a long list, which is sorted instead of searched.
-		const part = list.subarray(from, to);
-		if (part.length > 1) part.sort((a, b) => upper(a) - upper(b) || a - b);
-		for (let i = 0; i < part.length;) {
+		sortBy(list, from, to, upper);
+		for (let i = from; i < to;) {
 			let j = i + 1;
-			const other = upper(part[i]);
-			while (j < part.length && upper(part[j]) === other) j++;
-			closeGroup(table, part, i, j, triangles);
+			const end = upper(list[i]);
+			while (j < to && upper(list[j]) === end) j++;
+			closeGroup(table, list, i, j, triangles);
 			i = j;
 		}
 	}
 	return table;
+}
+
+/** Insertion sort for the usual short list; a hub (the tip of a fan) goes to the library. Equal keys keep their order. */
+function sortBy(list: Uint32Array, from: number, to: number, key: (e: number) => number): void {
+	if (to - from > 64) {
+		list.subarray(from, to).sort((a, b) => key(a) - key(b) || a - b);
+		return;
+	}
+	for (let i = from + 1; i < to; i++) {
+		const e = list[i];
+		const k = key(e);
+		let j = i - 1;
+		while (j >= from && key(list[j]) > k) {
+			list[j + 1] = list[j];
+			j--;
+		}
+		list[j + 1] = e;
+	}
 }
 
 function closeGroup(table: EdgeTable, list: Uint32Array, from: number, to: number, triangles: Uint32Array): void {
@@ -137,7 +156,10 @@ export function partsOf(
 	return { of, count };
 }
 
-/** Closed chains of open edges, by walking from end to end; a vertex with several ways is passed once for each. */
+/**
+ * Closed chains of open edges. A chain that meets itself at a vertex is split there, so that holes that touch in a point
+ * are counted one by one; `chains` are those that do not close (where orientations clash).
+ */
 export function countLoops(triangles: Uint32Array, edges: EdgeTable): { loops: number; chains: number } {
 	const next = new Map<number, number[]>();
 	for (let e = 0; e < triangles.length; e++) {
@@ -151,15 +173,21 @@ export function countLoops(triangles: Uint32Array, edges: EdgeTable): { loops: n
 	let chains = 0;
 	for (const [begin, list] of next) {
 		while (list.length > 0) {
-			let at = begin;
+			const path = [begin];
+			const onPath = new Set(path);
 			for (;;) {
-				const edge = next.get(at)?.pop();
+				const edge = next.get(path[path.length - 1])?.pop();
 				if (edge === undefined) break;
-				at = triangles[edge % 3 === 2 ? edge - 2 : edge + 1];
-				if (at === begin) break;
+				const to = triangles[edge % 3 === 2 ? edge - 2 : edge + 1];
+				if (!onPath.has(to)) {
+					path.push(to);
+					onPath.add(to);
+					continue;
+				}
+				loops++;
+				while (path[path.length - 1] !== to) onPath.delete(path.pop()!);
 			}
-			if (at === begin) loops++;
-			else chains++;
+			if (path.length > 1) chains++;
 		}
 	}
 	return { loops, chains };
