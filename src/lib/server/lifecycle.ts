@@ -1,6 +1,6 @@
 /** What the server does once when it starts, and when it ends. */
 import { closeDatabase } from './db/client';
-import { startJobs, stopJobs, warmPreviews } from './jobs/runtime';
+import { endStreams, startJobs, stopJobs, warmPreviews } from './jobs/runtime';
 import { log } from './log';
 
 /**
@@ -15,6 +15,8 @@ export async function startServing(): Promise<void> {
 	}
 	await startJobs();
 	void warmPreviews();
+	// adapter-node waits for open answers; those of watchers would not end by themselves.
+	for (const signal of ['SIGTERM', 'SIGINT']) process.once(signal, endStreams);
 	process.once('sveltekit:shutdown', () => {
 		stopJobs()
 			.then(closeDatabase)

@@ -54,8 +54,6 @@ export async function startJobs(): Promise<void> {
 	await queue.open();
 	await listener.open();
 	runtime.supervisor.start();
-	// A server waits for its open answers before it says that it is closing; those of watchers never end by themselves.
-	for (const signal of ['SIGTERM', 'SIGINT'] as const) process.once(signal, () => runtime.closing.abort());
 	log.info({ threads: runtime.supervisor.threads.size }, 'ready for jobs');
 }
 
@@ -64,6 +62,11 @@ export async function warmPreviews(): Promise<void> {
 	await jobsRuntime()
 		.previews.run({ kind: 'warm', control: new Control().buffer })
 		.catch((error) => log.error({ err: error }, 'the preview thread could not be started'));
+}
+
+/** Ends the streams of those who watch jobs. */
+export function endStreams(): void {
+	holder[KEY]?.closing.abort();
 }
 
 /** Gives unfinished jobs back and ends the threads and connections of startJobs. */
