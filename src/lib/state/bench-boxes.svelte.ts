@@ -45,8 +45,8 @@ export class BoxesState {
 	#undo = $state.raw<Edit[]>([]);
 	#redo = $state.raw<Edit[]>([]);
 	#gesture: { id: string; before: BoxCreate } | null = null;
-	readonly #timers = new Map<string, ReturnType<typeof setTimeout>>();
-	readonly #running = new Map<string, Promise<void>>();
+	readonly #timers: Record<string, ReturnType<typeof setTimeout>> = {};
+	readonly #running: Record<string, Promise<void>> = {};
 
 	/** `stored`: called with the list whenever the server has a new version of it. */
 	constructor(
@@ -134,13 +134,16 @@ export class BoxesState {
 		return box;
 	}
 
+	/** `stem n` for the first n that no box has. */
+	freeName(stem: string, n: number): string {
+		while (this.list.some((b) => b.name === `${stem} ${n}`)) n++;
+		return `${stem} ${n}`;
+	}
+
 	async duplicate(id: string): Promise<Box | null> {
 		const box = this.byId(id);
 		if (!box) return null;
-		const taken = new Set(this.list.map((b) => b.name));
-		let copy = 2;
-		while (taken.has(`${box.name} ${copy}`)) copy++;
-		return this.create({ ...bodyOf(box), name: `${box.name} ${copy}` });
+		return this.create({ ...bodyOf(box), name: this.freeName(box.name, 2) });
 	}
 
 	async remove(id: string) {
@@ -172,8 +175,8 @@ export class BoxesState {
 
 	/** Saves what waits, now. Rejects when something could not be saved. */
 	async flush() {
-		for (const id of [...this.#timers.keys()]) this.#saveNow(id);
-		await Promise.all(this.#running.values());
+		for (const id of Object.keys(this.#timers)) this.#saveNow(id);
+		await Promise.all(Object.values(this.#running));
 		if (this.saveProblem) throw this.saveProblem;
 	}
 
@@ -209,9 +212,8 @@ export class BoxesState {
 	}
 
 	async #vanish(id: string) {
-		clearTimeout(this.#timers.get(id));
-		this.#timers.delete(id);
-		await this.#running.get(id);
+		this.#unwait(id);
+		await this.#running[id];
 		await api.removeBox({ id });
 		this.list = this.list.filter((b) => b.id !== id);
 		const { [id]: _gone, ...rest } = this.saves;
@@ -224,22 +226,25 @@ export class BoxesState {
 		this.saves = { ...this.saves, [id]: { state, problem } };
 	}
 
+	#unwait(id: string) {
+		clearTimeout(this.#timers[id]);
+		delete this.#timers[id];
+	}
+
 	#saveLater(id: string) {
-		clearTimeout(this.#timers.get(id));
+		clearTimeout(this.#timers[id]);
 		this.#mark(id, 'waiting');
-		this.#timers.set(
-			id,
-			setTimeout(() => this.#saveNow(id), SAVE_AFTER_MS)
-		);
+		this.#timers[id] = setTimeout(() => this.#saveNow(id), SAVE_AFTER_MS);
 	}
 
 	#saveNow(id: string) {
-		clearTimeout(this.#timers.get(id));
-		this.#timers.delete(id);
+		this.#unwait(id);
 		// One save of a box after the other: a later one must not overtake an earlier one.
-		const turn = (this.#running.get(id) ?? Promise.resolve()).then(() => this.#save(id));
-		this.#running.set(id, turn);
-		void turn.then(() => this.#running.get(id) === turn && this.#running.delete(id));
+		const turn = (this.#running[id] ?? Promise.resolve()).then(() => this.#save(id));
+		this.#running[id] = turn;
+		void turn.then(() => {
+			if (this.#running[id] === turn) delete this.#running[id];
+		});
 	}
 
 	async #save(id: string) {
@@ -251,7 +256,7 @@ export class BoxesState {
 			const { version, updatedAt } = await api.replaceBox({ id, body });
 			this.list = this.list.map((b) => (b.id === id ? { ...b, version, updatedAt } : b));
 			const now = this.byId(id);
-			if (now && same(bodyOf(now), body) && !this.#timers.has(id)) this.#mark(id, 'saved');
+			if (now && same(bodyOf(now), body) && !(id in this.#timers)) this.#mark(id, 'saved');
 			this.stored(this.list);
 		} catch (cause) {
 			this.#mark(id, 'failed', asProblem(cause));

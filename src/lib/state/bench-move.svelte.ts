@@ -71,14 +71,18 @@ export class MoveState {
 		const study = this.study();
 		if (!shape || !study) return null;
 		if (shape.maps.length === 0) {
-			return { text: 'This shape has no sensitivity map yet, so there is nothing to say where moving it helps.', mend: 'map' };
+			return {
+				text: 'This shape has no sensitivity map yet, so there is nothing to say where moving it helps.',
+				mend: 'map'
+			};
 		}
 		if (this.used.length === 0) return { text: 'No design box is taken into the move: nothing may move.', mend: 'box' };
 		const steers = shape.maps.some((m) => {
 			const objective = study.objectives.find((o) => o.id === m.objectiveId);
 			return objective && objective.sense !== 'hold' && this.weightOf(objective.id) > 0;
 		});
-		if (!steers) return { text: 'No objective with a map on this shape has a weight: nothing steers the move.', mend: 'weight' };
+		if (!steers)
+			return { text: 'No objective with a map on this shape has a weight: nothing steers the move.', mend: 'weight' };
 		return null;
 	});
 
@@ -137,7 +141,8 @@ export class MoveState {
 	}
 
 	use(id: string, on: boolean) {
-		this.boxIds = on ? [...new Set([...this.boxIds, id])] : this.boxIds.filter((b) => b !== id);
+		const others = this.boxIds.filter((b) => b !== id);
+		this.boxIds = on ? [...others, id] : others;
 	}
 
 	weigh(objectiveId: string, weight: number) {

@@ -1,5 +1,5 @@
 import { getContext, setContext } from 'svelte';
-import { ApiProblem, apiPath, asProblem, problemFromText } from '$lib/api/client';
+import { apiPath, asProblem, problemFromText, type ApiProblem } from '$lib/api/client';
 import type { Box, BoxCreate, SensitivityMap, Shape, ShapeSummary, Study } from '$lib/api/schemas';
 import { metresPerUnit } from '$lib/format/units';
 import { DisplayWorker } from '$lib/workers/display';
@@ -143,7 +143,10 @@ export class BenchState {
 			]);
 			if (load !== this.#loads) return;
 			const scale = this.metresPerUnit;
-			const mesh = await this.#worker.ask('load', { positions, triangles, metresPerUnit: scale }, [positions, triangles]);
+			const mesh = await this.#worker.ask('load', { positions, triangles, metresPerUnit: scale }, [
+				positions,
+				triangles
+			]);
 			if (load !== this.#loads) return;
 			this.fields = {};
 			this.histogram = null;
@@ -164,7 +167,10 @@ export class BenchState {
 	async show(layer: Layer) {
 		if (layer === 'parent' && !this.fields.parent && this.parent) {
 			const positions = await bytes(apiPath('getPositions', { id: this.parent.id }));
-			await this.#keep('parent', this.#worker.ask('difference', { positions, metresPerUnit: this.metresPerUnit }, [positions]));
+			await this.#keep(
+				'parent',
+				this.#worker.ask('difference', { positions, metresPerUnit: this.metresPerUnit }, [positions])
+			);
 		}
 		this.layer = layer;
 		await this.countHistogram();
@@ -230,11 +236,8 @@ export class BenchState {
 		const rounded = (x: number) => Number(roundTo(x, step).toPrecision(12));
 		const centre = (around ?? middle).map(rounded) as Vec3;
 		const halfSize = size.map((s) => Math.max(least, rounded(Math.min(s * 0.3, longest * 0.18)))) as Vec3;
-		const taken = new Set(this.boxes.list.map((b) => b.name));
-		let n = this.boxes.list.length + 1;
-		while (taken.has(`Box ${n}`)) n++;
 		const body: BoxCreate = {
-			name: `Box ${n}`,
+			name: this.boxes.freeName('Box', this.boxes.list.length + 1),
 			centre,
 			halfSize,
 			rotation: [0, 0, 0, 1],

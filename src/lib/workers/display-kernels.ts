@@ -77,6 +77,32 @@ export function boundsOf(positions: Float32Array): { min: Vec3; max: Vec3 } {
 	return { min, max };
 }
 
+/**
+ * `values` (n) averaged over the neighbours along edges, `passes` times; noise at single vertices goes, the large picture stays.
+ * @param triangles f x 3, borrowed
+ */
+export function averaged(values: Float32Array, triangles: Uint32Array, passes: number): Float32Array {
+	const degree = new Float32Array(values.length);
+	for (const v of triangles) degree[v] += 2;
+	let from = values.slice();
+	let to = new Float32Array(values.length);
+	for (let pass = 0; pass < passes; pass++) {
+		to.fill(0);
+		for (let t = 0; t < triangles.length; t += 3) {
+			const a = triangles[t];
+			const b = triangles[t + 1];
+			const c = triangles[t + 2];
+			const sum = from[a] + from[b] + from[c];
+			to[a] += sum - from[a];
+			to[b] += sum - from[b];
+			to[c] += sum - from[c];
+		}
+		for (let v = 0; v < to.length; v++) to[v] = degree[v] > 0 ? 0.5 * from[v] + (0.5 * to[v]) / degree[v] : from[v];
+		[from, to] = [to, from];
+	}
+	return from;
+}
+
 /** Extremes of `values` (n) and the |value| below which 98 % of the area (`areas`, n) lies. */
 export function spreadOf(values: Float32Array, areas: Float32Array): FieldSpread {
 	let min = Infinity;

@@ -4,8 +4,8 @@
  */
 import { BufferAttribute, BufferGeometry, DoubleSide, Ray, Vector3 } from 'three';
 import { MeshBVH } from 'three-mesh-bvh';
-import { controlPoints, latticeMotion, toMetres, type DesignBox, type LatticeMotion } from '$lib/morph';
-import { along, boundsOf, histogramOf, scaled, spreadOf, vertexNormals } from './display-kernels';
+import { latticeMotion, toMetres, type DesignBox, type LatticeMotion } from '$lib/morph';
+import { along, averaged, boundsOf, histogramOf, scaled, spreadOf, vertexNormals } from './display-kernels';
 import type {
 	DisplayCall,
 	DisplayField,
@@ -21,6 +21,8 @@ import type {
 
 const MM_PER_M = 1000;
 const KEPT_MOTIONS = 16;
+/** Of averaging over neighbours, before a map's contour lines are drawn: about three edges wide. */
+const LEVEL_PASSES = 16;
 
 interface Loaded {
 	/** N x 3, metres; float64 for the engine, float32 for the picture. */
@@ -34,8 +36,6 @@ interface Loaded {
 }
 
 interface Moved {
-	boxes: DesignBox[];
-	lattices: Float64Array[];
 	/** Vertices in any box, ascending, and their displacements (n x 3, metres). */
 	vertices: Uint32Array;
 	displacement: Float64Array;
@@ -101,13 +101,15 @@ export class DisplayModel {
 
 	#map(values: Float32Array, scale: number): DisplayField {
 		this.#sized(values, this.#surface.areas.length);
-		return this.#keep('map', scaled(values, scale));
+		const shown = scaled(values, scale);
+		return { ...this.#keep('map', shown), levels: averaged(shown, this.#surface.triangles, LEVEL_PASSES) };
 	}
 
 	/** Keeps a field for later questions and hands out a copy with its spread. */
 	#keep(name: FieldName, values: Float32Array): DisplayField {
 		this.#fields.set(name, values);
-		return { values: values.slice(), spread: spreadOf(values, this.#surface.areas) };
+		const copy = values.slice();
+		return { values: copy, levels: copy, spread: spreadOf(values, this.#surface.areas) };
 	}
 
 	#sized(values: Float32Array, length: number): Float32Array {
@@ -153,12 +155,12 @@ export class DisplayModel {
 				MM_PER_M * (shift[at] * normals[at] + shift[at + 1] * normals[at + 1] + shift[at + 2] * normals[at + 2]);
 		});
 		this.#fields.set('move', values);
-		this.#moved = { boxes, lattices, vertices, displacement, positions };
+		this.#moved = { vertices, displacement, positions };
 		return this.#draw(exaggeration);
 	}
 
 	#draw(exaggeration: number): DisplayMove {
-		const { exact, triangles, areas, positions: rest } = this.#surface;
+		const { exact, triangles, positions: rest } = this.#surface;
 		const moved = this.#moved;
 		const values = this.#fields.get('move');
 		if (!moved || !values) throw new Error('No move has been previewed.');
@@ -173,11 +175,7 @@ export class DisplayModel {
 		return {
 			positions: positions.slice(),
 			normals: vertexNormals(positions, triangles),
-			points: moved.boxes.map((box, b) => {
-				const shift = moved.lattices[b];
-				return Float32Array.from(controlPoints(box), (x, i) => x + exaggeration * shift[i]);
-			}),
-			field: { values: values.slice(), spread: spreadOf(values, areas) }
+			field: this.#keep('move', values)
 		};
 	}
 
@@ -234,7 +232,6 @@ function barycentric(p: Vector3, [a, b, c]: Vector3[]): [number, number, number]
 	const n = new Vector3().crossVectors(b.clone().sub(a), c.clone().sub(a));
 	const area = n.lengthSq();
 	if (area === 0) return [1, 0, 0];
-	const part = (q: Vector3, r: Vector3) =>
-		n.dot(new Vector3().crossVectors(r.clone().sub(q), p.clone().sub(q))) / area;
+	const part = (q: Vector3, r: Vector3) => n.dot(new Vector3().crossVectors(r.clone().sub(q), p.clone().sub(q))) / area;
 	return [part(b, c), part(c, a), part(a, b)];
 }

@@ -31,6 +31,8 @@ export interface FieldSpread {
 /** One value at each vertex. */
 export interface DisplayField {
 	values: Float32Array;
+	/** What contour lines follow: a map averaged over its neighbours, since its noise would draw lines of its own; else the values. */
+	levels: Float32Array;
 	spread: FieldSpread;
 }
 
@@ -39,8 +41,6 @@ export interface DisplayMove {
 	/** N x 3, metres: rest + exaggeration x displacement. */
 	positions: Float32Array;
 	normals: Float32Array;
-	/** By box in the order given: its control points where the move takes them, nPoints x 3, metres, exaggerated alike. */
-	points: Float32Array[];
 	/** Displacement along the rest surface's normal, mm; not exaggerated. */
 	field: DisplayField;
 }

@@ -12,7 +12,11 @@ export class DisplayWorker {
 	readonly #waiting = new Map<number, Waiting>();
 
 	/** `transfer`: buffers of the input that go over without a copy; they are empty here afterwards. */
-	ask<K extends DisplayCall>(call: K, input: DisplayInput<K>, transfer: Transferable[] = []): Promise<DisplayOutput<K>> {
+	ask<K extends DisplayCall>(
+		call: K,
+		input: DisplayInput<K>,
+		transfer: Transferable[] = []
+	): Promise<DisplayOutput<K>> {
 		const worker = (this.#worker ??= this.#start());
 		const id = this.#next++;
 		return new Promise<DisplayOutput<K>>((resolve, reject) => {

@@ -15,10 +15,9 @@ import type { Box } from '$lib/api/schemas';
 import type { Vec3 } from '$lib/workers/display-protocol';
 import type { Palette } from './palette';
 
-/** A design box to be drawn; `points` when a move has shifted its control points (nPoints x 3, metres). */
+/** A design box to be drawn. */
 export interface BoxDrawing {
 	box: Box;
-	points: Float32Array | null;
 	selected: boolean;
 	/** Taken into the next move. */
 	used: boolean;
@@ -107,12 +106,12 @@ export class Cage {
 		}
 	}
 
-	draw({ box, points, selected, used }: BoxDrawing, palette: Palette, pixelRatio: number) {
+	draw({ box, selected, used }: BoxDrawing, palette: Palette, pixelRatio: number) {
 		const at = corners.map((c) => boxPoint(box, c));
 		this.#edges.setAttribute('position', floats(edges.flatMap(([a, b]) => [...at[a], ...at[b]])));
 		for (const part of this.#selectedParts) part.visible = selected;
 		if (selected) {
-			const place = points ?? restPoints(box);
+			const place = restPoints(box);
 			this.#points.setAttribute('position', new BufferAttribute(place, 3));
 			this.#points.setAttribute('held', new BufferAttribute(Float32Array.from(heldPoints(box.lattice, box.held)), 1));
 			this.#lattice.setAttribute('position', new BufferAttribute(latticeLines(box.lattice, place), 3));
@@ -161,4 +160,3 @@ function latticeLines([nu, nv, nw]: readonly number[], points: Float32Array): Fl
 			}
 	return new Float32Array(out);
 }
-

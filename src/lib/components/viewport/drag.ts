@@ -70,7 +70,13 @@ export function beginDrag(box: Placement, handle: Handle, place: Vec3, from: Ray
 			// The side's whole length gets the round number, so that what is typed and what is dragged agree.
 			const length = 2 * box.halfSize[k];
 			const change = keep(length + (keys.shift ? 2 * out : out), step, keys) - length;
-			return faceMoved(box, handle.face, keys.shift ? change / 2 : change, LEAST_PX * context.metresPerPixel, keys.shift);
+			return faceMoved(
+				box,
+				handle.face,
+				keys.shift ? change / 2 : change,
+				LEAST_PX * context.metresPerPixel,
+				keys.shift
+			);
 		};
 	}
 	if (handle.kind === 'centre') {
@@ -103,7 +109,9 @@ export function beginDrag(box: Placement, handle: Handle, place: Vec3, from: Ray
 	return (ray: Ray, keys: Modifiers): Placement => {
 		const now = flat ? onPlane(ray, place, context.back) : onPlane(ray, box.centre, axis);
 		if (!now || !begun || radius === 0) return box;
-		const angle = flat ? dot(difference(now, begun), across) / radius / radius : angleAbout(box.centre, axis, begun, now);
+		const angle = flat
+			? dot(difference(now, begun), across) / radius / radius
+			: angleAbout(box.centre, axis, begun, now);
 		return turned(box, handle.axis, keep(angle, (keys.shift ? 15 : 1) * DEGREE, keys));
 	};
 }

@@ -5,6 +5,8 @@ export interface Palette {
 	ink: Color;
 	mute: Color;
 	ground: Color;
+	/** Lines on the surface: dark in both themes, as the values between them are not. */
+	line: Color;
 	/** Surface without a value. */
 	plain: Color;
 	/** Surface where the value is zero. */
@@ -28,6 +30,7 @@ export function readPalette(element: Element): Palette {
 		ink: token('--ink'),
 		mute: token('--mute'),
 		ground: token('--ground'),
+		line: dark ? token('--ground') : token('--ink'),
 		plain: colour(dark ? '#7d868b' : '#c9c2b4'),
 		zero: colour(dark ? '#66757a' : '#f4eee2'),
 		copper: colour(dark ? '#f29250' : '#b5480f'),

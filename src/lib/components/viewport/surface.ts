@@ -1,14 +1,4 @@
-import {
-	BufferAttribute,
-	BufferGeometry,
-	Color,
-	DoubleSide,
-	Matrix4,
-	Mesh,
-	ShaderMaterial,
-	Vector3,
-	Vector4
-} from 'three';
+import { BufferAttribute, BufferGeometry, Color, DoubleSide, Matrix4, Mesh, ShaderMaterial, Vector4 } from 'three';
 import type { DisplayMesh, Vec3 } from '$lib/workers/display-protocol';
 import type { Palette } from './palette';
 
@@ -18,11 +8,13 @@ export const MAX_BOXES = 12;
 const vertexShader = /* glsl */ `
 	attribute vec3 rest;
 	attribute float field;
+	attribute float level;
 	varying vec3 vNormal;
 	varying vec3 vEye;
 	varying vec3 vRest;
 	varying vec3 vPlace;
 	varying float vField;
+	varying float vLevel;
 	void main() {
 		vec4 eye = modelViewMatrix * vec4(position, 1.0);
 		vNormal = normalMatrix * normal;
@@ -30,13 +22,14 @@ const vertexShader = /* glsl */ `
 		vRest = rest;
 		vPlace = position;
 		vField = field;
+		vLevel = level;
 		gl_Position = projectionMatrix * eye;
 	}
 `;
 
 const fragmentShader = /* glsl */ `
 	precision highp float;
-	uniform vec3 uInk, uPlain, uZero, uCopper, uVerdigris;
+	uniform vec3 uInk, uLine, uPlain, uZero, uCopper, uVerdigris;
 	uniform vec2 uShade;
 	uniform float uLimit, uInterval, uDim;
 	uniform mat4 uBoxes[${MAX_BOXES}];
@@ -47,6 +40,7 @@ const fragmentShader = /* glsl */ `
 	varying vec3 vRest;
 	varying vec3 vPlace;
 	varying float vField;
+	varying float vLevel;
 
 	// 1 on the line d = 0 of a distance whose pixel size is w, 'width' pixels wide.
 	float line(float d, float w, float width) {
@@ -61,11 +55,11 @@ const fragmentShader = /* glsl */ `
 		if (uLimit > 0.0) {
 			float t = clamp(vField / uLimit, -1.0, 1.0);
 			colour = mix(uZero, t < 0.0 ? uVerdigris : uCopper, pow(abs(t), 0.85));
-			float c = vField / uInterval;
+			float c = vLevel / uInterval;
 			float w = fwidth(c);
 			// Lines of equal value, none at zero where noise would draw its own, none where they would run together.
 			float level = round(c);
-			if (abs(level) > 0.5 && abs(vField) < uLimit * 1.02)
+			if (abs(level) > 0.5 && abs(vLevel) < uLimit * 1.02)
 				contour = line(c - level, w, 0.6) * (1.0 - smoothstep(0.22, 0.45, w));
 		}
 		if (!gl_FrontFacing) { colour = mix(uPlain, uInk, 0.45); contour = 0.0; }
@@ -75,7 +69,7 @@ const fragmentShader = /* glsl */ `
 			if (i >= uBoxCount) break;
 			vec3 p = abs((uBoxes[i] * vec4(vRest, 1.0)).xyz);
 			float d = max(p.x, max(p.y, p.z)) - 1.0;
-			float here = line(d, fwidth(d), i == uSelected ? 1.6 : 0.6);
+			float here = line(d, fwidth(d), i == uSelected ? 0.9 : 0.3);
 			edge = max(edge, i == uSelected ? here : 0.45 * here);
 			if (i == uSelected && d <= 0.0) inside = 1.0;
 		}
@@ -92,7 +86,7 @@ const fragmentShader = /* glsl */ `
 		float gloss = pow(max(0.0, dot(reflect(-normalize(vec3(-0.35, 0.75, 0.6)), n), eye)), 28.0);
 		colour = colour * light + 0.06 * gloss;
 
-		colour = mix(colour, uInk, 0.5 * contour);
+		colour = mix(colour, uLine, 0.5 * contour);
 		colour = mix(colour, uInk, 0.85 * edge);
 		if (uRing.w > 0.0) {
 			float r = distance(vPlace, uRing.xyz) - uRing.w;
@@ -146,6 +140,7 @@ export class Surface {
 			polygonOffsetUnits: 1,
 			uniforms: {
 				uInk: { value: new Color() },
+				uLine: { value: new Color() },
 				uPlain: { value: new Color() },
 				uZero: { value: new Color() },
 				uCopper: { value: new Color() },
@@ -204,12 +199,13 @@ export class Surface {
 		this.ghost.visible = ghost && moved !== null;
 	}
 
-	/** A value at each vertex; null: none. */
-	setField(values: Float32Array | null) {
+	/** A value at each vertex, and what contour lines follow; null: none. */
+	setField(field: { values: Float32Array; levels: Float32Array } | null) {
 		if (!this.#rest) return;
 		// Without a field the attribute still has to be there: one that costs nothing would need another shader.
-		const array = values ?? new Float32Array(this.#rest.position.count);
-		this.#geometry.setAttribute('field', new BufferAttribute(array, 1));
+		const values = field?.values ?? new Float32Array(this.#rest.position.count);
+		this.#geometry.setAttribute('field', new BufferAttribute(values, 1));
+		this.#geometry.setAttribute('level', new BufferAttribute(field?.levels ?? values, 1));
 	}
 
 	/** Full colour at ±limit; 0: no colour. */
@@ -236,6 +232,7 @@ export class Surface {
 	setPalette(palette: Palette) {
 		const u = this.#material.uniforms;
 		(u.uInk.value as Color).copy(palette.ink);
+		(u.uLine.value as Color).copy(palette.line);
 		(u.uPlain.value as Color).copy(palette.plain);
 		(u.uZero.value as Color).copy(palette.zero);
 		(u.uCopper.value as Color).copy(palette.copper);
@@ -251,4 +248,3 @@ export class Surface {
 		this.#ghostMaterial.dispose();
 	}
 }
-

@@ -80,8 +80,8 @@ export class Viewport {
 		this.invalidate();
 	}
 
-	setField(values: Float32Array | null) {
-		this.#surface.setField(values);
+	setField(field: { values: Float32Array; levels: Float32Array } | null) {
+		this.#surface.setField(field);
 		this.invalidate();
 	}
 
