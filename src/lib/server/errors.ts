@@ -131,6 +131,16 @@ function fromMorph(error: MorphError): AppError {
 	});
 }
 
+/** No connection, or one that broke in the middle of a query: PostgreSQL's class 08 and its words at a shutdown, or none at all. */
+function isLostDatabase(error: Error): boolean {
+	if (/^Sequelize(Connection|HostNot|AccessDenied)/.test(error.name)) return true;
+	const { code = '' } = ((error as { original?: unknown }).original ?? error) as { code?: unknown };
+	return (
+		/^(08...|57P0[123]|ECONNRESET|ECONNREFUSED|EPIPE)$/.test(String(code)) ||
+		/^Connection terminated/.test(error.message)
+	);
+}
+
 /**
  * The refusal in whatever was thrown: an AppError as it is, an engine's refusal by the table above, a lost database as
  * `unavailable`, and anything else as `internal` under a new id, its details in the log alone.
@@ -142,7 +152,7 @@ export function asAppError(thrown: unknown): AppError {
 	}
 	if (isMorphError(thrown)) return fromMorph(thrown);
 	const errorId = randomUUID();
-	if (thrown instanceof Error && /^Sequelize(Connection|HostNot|AccessDenied)/.test(thrown.name)) {
+	if (thrown instanceof Error && isLostDatabase(thrown)) {
 		log.error({ err: thrown, errorId }, 'the database does not answer');
 		return new AppError('unavailable', 'The database does not answer.', {
 			mend: 'Try again in a moment. Nothing that was committed is lost.',
