@@ -4,6 +4,7 @@ import { empty, shown } from './errors';
 import { readObj } from './obj-read';
 import { readPly } from './ply-read';
 import { readStlSurface } from './stl-surface';
+import { plainBytes } from './text';
 import type { ReadOptions, SurfaceFile, SurfaceFormat } from './types';
 import { unpack } from './unpack';
 import { readVtk } from './vtk-read';
@@ -25,7 +26,7 @@ const READERS: Record<SurfaceFormat, (bytes: Uint8Array, options: ReadOptions) =
 export function parseSurface(bytes: Uint8Array, filename: string, options: ReadOptions = {}): SurfaceFile {
 	if (bytes.length === 0)
 		throw empty(`"${shown(filename)}" holds no bytes.`, 'Export the surface again and check the upload.');
-	const text = toUtf8(bytes);
+	const text = toUtf8(plainBytes(bytes));
 	const surface = READERS[detectSurface(text.bytes, filename)](text.bytes, options);
 	if (text.converted) surface.notes.push({ code: 'encoding', text: 'The text was converted from UTF-16.' });
 	surface.filename = filename;

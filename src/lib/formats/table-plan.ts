@@ -1,6 +1,6 @@
 import { MorphError } from '$lib/morph';
 import { shown } from './errors';
-import { TextReader, nameText, spellsNonFinite } from './text';
+import { TextReader, nameText, plainBytes, spellsNonFinite } from './text';
 
 export type Delimiter = ',' | ';' | '\t' | '|' | ' ';
 
@@ -222,10 +222,11 @@ export function guessColumns(columns: TableColumn[], named: boolean): { guess: T
 
 /**
  * Finds how a table of text is to be read, from its first lines: delimiter, decimal sign, header, columns.
- * @param bytes the file or at least its first 256 kB, borrowed; UTF-8 or Latin-1 (see toUtf8 for UTF-16)
+ * @param file the file or at least its first 256 kB, borrowed; UTF-8 or Latin-1 (see toUtf8 for UTF-16)
  * @throws MorphError csv-empty, csv-syntax
  */
-export function planTable(bytes: Uint8Array, filename: string): TablePlan {
+export function planTable(file: Uint8Array, filename: string): TablePlan {
+	const bytes = plainBytes(file);
 	const begin = bytes[0] === 0xef && bytes[1] === 0xbb && bytes[2] === 0xbf ? 3 : 0;
 	const end = Math.min(bytes.length, SAMPLE_BYTES);
 	const zero = bytes.subarray(0, end).indexOf(0);

@@ -2,7 +2,7 @@ import { MorphError, type MapTable, type WithCheckpoint } from '$lib/morph';
 import { toUtf8 } from './detect';
 import { lineAt, shown } from './errors';
 import { planTable, isComment, splitFields, fieldNumber, type TableColumns, type TablePlan } from './table-plan';
-import { TextReader, nameText, spellsNonFinite } from './text';
+import { TextReader, nameText, plainBytes, spellsNonFinite } from './text';
 
 export interface ReadTableOptions extends WithCheckpoint {
 	/** As the dialog left it; default: what planTable finds. */
@@ -47,7 +47,7 @@ export function readMapTable(
 	filename: string,
 	options: ReadTableOptions = {}
 ): { table: MapTable; plan: TablePlan } {
-	const text = toUtf8(bytes).bytes;
+	const text = toUtf8(plainBytes(bytes)).bytes;
 	const plan = options.plan ?? planTable(text, filename);
 	const columns = chosenColumns(plan, options.columns);
 	const reader = new RowReader(text, plan, columns, options);

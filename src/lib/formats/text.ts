@@ -58,6 +58,10 @@ function scaled(head: number, tail: number, tailDigits: number, exponent: number
 	return up === hi && down === hi ? hi : NaN;
 }
 
+/** The same bytes as a plain Uint8Array: Node's Buffer has a slice that shares its memory. */
+export const plainBytes = (bytes: Uint8Array): Uint8Array =>
+	bytes.constructor === Uint8Array ? bytes : new Uint8Array(bytes.buffer, bytes.byteOffset, bytes.byteLength);
+
 const MINUS = 45;
 const PLUS = 43;
 const POINT = 46;
