@@ -85,7 +85,7 @@ function readText(path) {
  */
 function* plan(stages, folder) {
 	/** @type {NodeJS.ProcessEnv} */
-	const env = { ...process.env, PLANISH_TEST_FOLDER: folder, FORCE_COLOR: '0' };
+	const env = { ...process.env, PLANISH_TEST_FOLDER: folder, NO_COLOR: '1', FORCE_COLOR: '0' };
 	delete env.DATABASE_URL;
 	let built = true;
 	yield [
