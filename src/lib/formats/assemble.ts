@@ -162,7 +162,8 @@ export function toPositions(values: ArrayLike<number>, exactInFile: boolean, not
 	let worst = 0;
 	for (let i = 0; i < out.length; i++) {
 		const value = values[i];
-		out[i] = value + 0;
+		// A value too small for 32 bits becomes -0, too.
+		out[i] = Math.fround(value) + 0;
 		const lost = Math.abs(value - out[i]);
 		if (lost > worst) worst = lost;
 	}

@@ -33,6 +33,8 @@ export interface FrameOptions {
 
 const SAMPLE = 1500;
 const QUICK_SAMPLE = 120;
+/** Points after which a hopeless candidate is left; they are spread over the file like all samples. */
+const FIRST_LOOK = 24;
 /** A map with this share on the surface needs no doctor. */
 const WELL = 0.95;
 const LEAST_SHARE = 0.5;
@@ -144,13 +146,18 @@ function meanEdge({ positions: p, triangles }: HealthMesh): number {
 	return sum / Math.max(1, count);
 }
 
+const gcd = (a: number, b: number): number => (b === 0 ? a : gcd(b, a % b));
+
 /** Every k-th point, so that all parts of the file are seen. */
 function thin(points: ArrayLike<number>, count: number): Float64Array {
 	const n = points.length / 3;
 	const take = Math.min(n, count);
 	const out = new Float64Array(3 * take);
+	// A stride coprime to the count visits all of them in a spread order, so that the first few stand for the rest.
+	let stride = Math.max(1, Math.floor(take * 0.618));
+	while (gcd(stride, take) !== 1) stride++;
 	for (let i = 0; i < take; i++) {
-		const from = Math.floor((i * n) / take);
+		const from = Math.floor((((i * stride) % take) * n) / take);
 		for (let d = 0; d < 3; d++) out[3 * i + d] = points[3 * from + d];
 	}
 	return out;
@@ -169,6 +176,20 @@ class Nearest {
 		this.tree = new MeshBVH(geometry, { indirect: true });
 	}
 
+	/** Share of points within the tolerance; gives up early where the first of them are nearly all elsewhere. */
+	share(points: Float64Array, tolerance: number): number {
+		const n = points.length / 3;
+		let near = 0;
+		for (let i = 0; i < n; i++) {
+			this.point.fromArray(points, 3 * i);
+			// The search ends at the tolerance: a far point costs little.
+			const hit = this.tree.closestPointToPoint(this.point, this.hit, 0, tolerance * (1 + 1e-9));
+			if (hit && hit.distance <= tolerance) near++;
+			if (i + 1 === FIRST_LOOK && near < FIRST_LOOK / 6) return near / (i + 1);
+		}
+		return near / n;
+	}
+
 	look(points: Float64Array): { distance: Float64Array; towards: Float64Array } {
 		const distance = new Float64Array(points.length / 3);
 		const towards = new Float64Array(points.length);
@@ -182,8 +203,6 @@ class Nearest {
 	}
 }
 
-const share = (distance: Float64Array, tolerance: number) =>
-	distance.filter((d) => d <= tolerance).length / distance.length;
 const median = (values: Float64Array) => values.slice().sort()[values.length >> 1];
 
 /**
@@ -204,7 +223,7 @@ export function suspectFrame(points: ArrayLike<number>, mesh: HealthMesh, option
 	const sample = thin(points, options.sample ?? SAMPLE);
 	const quick = thin(sample, QUICK_SAMPLE);
 	const nearest = new Nearest(mesh);
-	const before = share(nearest.look(sample).distance, tolerance);
+	const before = nearest.share(sample, tolerance);
 	if (before >= WELL) return [];
 	const whole = boundsOf(points);
 	const cases = axesCases();
@@ -219,7 +238,7 @@ export function suspectFrame(points: ArrayLike<number>, mesh: HealthMesh, option
 	const fits = (bounds: { min: number[]; max: number[] }) =>
 		size.every((s, d) => bounds.max[d] - bounds.min[d] <= 1.05 * s + 2 * tolerance);
 	const consider = (transform: FrameTransform, words: string[], changes: number) => {
-		const score = share(nearest.look(applyFrame(quick, transform)).distance, tolerance);
+		const score = nearest.share(applyFrame(quick, transform), tolerance);
 		candidates.push({ transform, words: words.filter(Boolean), changes, score });
 	};
 	for (const [scale, unit] of SCALES) {
@@ -250,11 +269,11 @@ export function suspectFrame(points: ArrayLike<number>, mesh: HealthMesh, option
 	}
 	candidates.sort((a, b) => b.score - a.score || a.changes - b.changes);
 	const fixes: FrameFix[] = [];
-	for (const candidate of candidates.slice(0, 24)) {
+	for (const candidate of candidates.slice(0, 12)) {
 		const shifted = candidate.transform.shift.some((s) => s !== 0);
 		const transform = shifted ? refine(nearest, quick, candidate.transform, tolerance) : candidate.transform;
-		const { distance } = nearest.look(applyFrame(sample, transform));
-		const after = share(distance, tolerance);
+		const moved = applyFrame(sample, transform);
+		const after = nearest.share(moved, tolerance);
 		if (after < LEAST_SHARE || after < before + LEAST_GAIN) continue;
 		const words = [...candidate.words];
 		if (shifted) {
@@ -267,7 +286,7 @@ export function suspectFrame(points: ArrayLike<number>, mesh: HealthMesh, option
 			text: `${words.join('. ')}. With that put right, ${Math.round(100 * after)} % of the points lie on the surface; now ${Math.round(100 * before)} % do.`,
 			before,
 			after,
-			median: median(distance),
+			median: median(nearest.look(moved).distance),
 			changes: candidate.changes
 		});
 	}

@@ -86,11 +86,11 @@ export class TextReader {
 		this.at = at;
 	}
 
-	/** Skips blanks within a line. */
+	/** Skips blanks within a line; control characters count as such, as they do for the end of a token. */
 	skipBlanks(): void {
 		const { bytes, end } = this;
 		let i = this.at;
-		while (i < end && (bytes[i] === 32 || bytes[i] === 9 || bytes[i] === 11 || bytes[i] === 12)) i++;
+		while (i < end && bytes[i] <= 32 && bytes[i] !== 10 && bytes[i] !== 13) i++;
 		this.at = i;
 	}
 
