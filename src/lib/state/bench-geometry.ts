@@ -21,6 +21,8 @@ export interface Ray {
 
 const vec = (v: readonly number[]) => new Vector3(v[0], v[1], v[2]);
 const list = (v: Vector3): Vec3 => [v.x, v.y, v.z];
+/** Without the last bits' noise, which would be stored and shown: 0.289, not 0.28900000000000003. */
+const tidy = (v: Vec3): Vec3 => v.map((x) => Number(x.toPrecision(12))) as Vec3;
 const quaternion = (q: Placement['rotation']) => new Quaternion(q[0], q[1], q[2], q[3]);
 
 /** The box's own axis `k` in the study's frame, unit. */
@@ -73,11 +75,11 @@ export function faceMoved(box: Placement, face: FaceName, by: number, least: num
 	halfSize[k] = half + change;
 	const shift = both ? 0 : change * sideOf(face);
 	const centre = list(vec(box.centre).addScaledVector(vec(boxAxis(box, k)), shift));
-	return { centre, halfSize, rotation: box.rotation };
+	return { centre: tidy(centre), halfSize: tidy(halfSize), rotation: box.rotation };
 }
 
 export function shifted(box: Placement, by: Vec3): Placement {
-	return { ...pick(box), centre: list(vec(box.centre).add(vec(by))) };
+	return { ...pick(box), centre: tidy(list(vec(box.centre).add(vec(by)))) };
 }
 
 const pick = ({ centre, halfSize, rotation }: Placement): Placement => ({ centre, halfSize, rotation });
@@ -119,7 +121,7 @@ export function dragStep(metresPerPixel: number, metresPerUnit: number): number 
 	return 10 ** Math.floor(Math.log10(metresPerPixel / metresPerUnit)) * metresPerUnit;
 }
 
-export const roundTo = (x: number, step: number) => Math.round(x / step) * step;
+export const roundTo = (x: number, step: number) => Number((Math.round(x / step) * step).toPrecision(12));
 
 /** Control points held by the faces' planes: 1 held, 0 free; ((i nv) + j) nw + k. */
 export function heldPoints(lattice: readonly number[], held: Held): Uint8Array {

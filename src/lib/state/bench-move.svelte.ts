@@ -95,15 +95,16 @@ export class MoveState {
 		Object.entries(this.answer?.checks ?? {}).filter(([, check]) => check.hard && !check.ok)
 	);
 
-	/** To be read by an effect: changes whenever another preview is due. */
-	get due(): string {
-		return this.#key;
+	/** To be read by an effect: changes whenever another preview is due. Not while a handle is held: the server has the old box. */
+	get due(): string | null {
+		return this.boxes.dragging ? null : this.#key;
 	}
 
 	schedule() {
 		clearTimeout(this.#timer);
 		this.#abort?.abort();
-		if (this.live && !this.obstacle && this.shape()) {
+		this.working = false;
+		if (this.live && this.due !== null && !this.obstacle && this.shape() && (this.stale || !this.answer)) {
 			this.#timer = setTimeout(() => void this.ask(), PREVIEW_AFTER_MS);
 		}
 	}
@@ -111,17 +112,21 @@ export class MoveState {
 	/** Previews now. A preview on its way is dropped. */
 	async ask() {
 		const shape = this.shape();
-		if (!shape || this.obstacle) return;
+		if (!shape || this.obstacle || this.boxes.dragging) return;
 		clearTimeout(this.#timer);
 		this.#abort?.abort();
 		const abort = (this.#abort = new AbortController());
 		this.working = true;
 		this.problem = null;
 		try {
-			// The server moves the boxes that it has.
-			await this.boxes.flush();
-			const boxes = this.used;
-			const [key, body] = [this.#key, this.recipe];
+			// The server moves the boxes that it has: what is shown must be what is stored, also after edits made meanwhile.
+			let key: string;
+			do {
+				key = this.#key;
+				await this.boxes.flush();
+			} while (key !== this.#key);
+			const [boxes, body] = [this.used, this.recipe];
+			if (abort.signal.aborted) return;
 			const answer = await api.previewMove({ id: shape.id, body, signal: abort.signal });
 			if (abort.signal.aborted) return;
 			this.preview = { shapeId: shape.id, key, boxes, answer };

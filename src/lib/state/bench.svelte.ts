@@ -69,7 +69,8 @@ export class BenchState {
 	readonly move: MoveState;
 	readonly #worker = new DisplayWorker();
 	#loads = 0;
-	#shareAsked = 0;
+	#sharing = false;
+	#shareDue = false;
 	#settled = false;
 
 	constructor(
@@ -130,7 +131,10 @@ export class BenchState {
 		const again = this.shape?.id === shape.id && this.meshOf === shape.id;
 		this.shape = shape;
 		if (!this.map || !shape.maps.some((m) => m.id === this.mapId)) this.mapId = shape.maps[0]?.id ?? null;
-		if (again) return this.#loadMap();
+		if (again) {
+			await this.#loadMap().catch((cause: unknown) => (this.problem = asProblem(cause)));
+			return;
+		}
 		const load = ++this.#loads;
 		this.loading = true;
 		this.problem = null;
@@ -212,16 +216,21 @@ export class BenchState {
 		return this.#worker.ask('pick', { ...ray, on, fields: ['map', 'move', 'parent'] });
 	}
 
-	/** How much of the surface the selected box holds. Only the newest question's answer is shown. */
+	/** How much of the surface the selected box holds. While a handle moves, only the newest place is asked for. */
 	async countShare() {
-		const box = this.boxes.selected;
-		if (!box || !this.mesh) {
-			this.share = null;
-			return;
+		this.#shareDue = true;
+		if (this.#sharing) return;
+		this.#sharing = true;
+		try {
+			while (this.#shareDue) {
+				this.#shareDue = false;
+				const box = this.boxes.selected;
+				const field = this.fields.map ? 'map' : null;
+				this.share = box && this.mesh ? await this.#worker.ask('share', { box: designBox(box), field }) : null;
+			}
+		} finally {
+			this.#sharing = false;
 		}
-		const asked = ++this.#shareAsked;
-		const share = await this.#worker.ask('share', { box: designBox(box), field: this.fields.map ? 'map' : null });
-		if (asked === this.#shareAsked) this.share = share;
 	}
 
 	/** A new box around a place of the surface, sized from the shape. */
@@ -233,7 +242,7 @@ export class BenchState {
 		const longest = Math.max(...size);
 		const least = longest * 0.02;
 		const step = 10 ** Math.floor(Math.log10(longest / 200 / this.metresPerUnit)) * this.metresPerUnit;
-		const rounded = (x: number) => Number(roundTo(x, step).toPrecision(12));
+		const rounded = (x: number) => roundTo(x, step);
 		const centre = (around ?? middle).map(rounded) as Vec3;
 		const halfSize = size.map((s) => Math.max(least, rounded(Math.min(s * 0.3, longest * 0.18)))) as Vec3;
 		const body: BoxCreate = {

@@ -25,8 +25,11 @@ export class DisplayWorker {
 		});
 	}
 
+	/** The page was left: what was asked is wanted by nobody any more and stays unanswered. */
 	close() {
-		this.#fail(new Error('The page was left.'));
+		this.#worker?.terminate();
+		this.#worker = null;
+		this.#waiting.clear();
 	}
 
 	#start(): Worker {

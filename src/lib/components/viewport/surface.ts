@@ -103,7 +103,7 @@ const ghostFragment = /* glsl */ `
 	varying vec3 vEye;
 	void main() {
 		float rim = 1.0 - abs(dot(normalize(vNormal), normalize(vEye)));
-		float a = 0.10 + 0.55 * smoothstep(0.55, 0.95, rim);
+		float a = 0.05 + 0.60 * smoothstep(0.55, 0.95, rim);
 		gl_FragColor = vec4(uInk, a * 0.55);
 	}
 `;
@@ -117,7 +117,7 @@ export function roundStep(x: number): number {
 }
 
 /** Between two contour lines for a scale that ends at `limit`. */
-export const contourInterval = (limit: number) => roundStep(limit / 6);
+export const contourInterval = (limit: number) => roundStep(limit / 5);
 
 /** The shape's surface, coloured by a value at each vertex, and its ghost: where it was before the move. */
 export class Surface {
