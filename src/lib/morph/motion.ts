@@ -14,10 +14,10 @@ export interface LatticeMotion {
 
 /**
  * Moves vertices by a lattice without a metric, constraints or a prediction: what a page needs to show a move whose lattices
- * it was given. The same operator as in `prepareMove`.
+ * it was given. The same operator as in `prepareMove`, by the cheaper of its two paths (equal within 1e-8).
  * @param positions N x 3, metres, borrowed
  */
 export function latticeMotion(positions: Float64Array, box: DesignBox): LatticeMotion {
-	const operator = new BoxOperator(box, { positions }, undefined, 'direct');
+	const operator = new BoxOperator(box, { positions }, undefined, 'auto');
 	return { inside: operator.inside, displace: (lattice) => operator.evaluate(lattice) };
 }

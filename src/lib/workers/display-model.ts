@@ -4,7 +4,7 @@
  */
 import { BufferAttribute, BufferGeometry, DoubleSide, Ray, Vector3 } from 'three';
 import { MeshBVH } from 'three-mesh-bvh';
-import { latticeMotion, toMetres, type DesignBox, type LatticeMotion } from '$lib/morph';
+import { embed, latticeMotion, toMetres, type DesignBox, type LatticeMotion } from '$lib/morph';
 import { along, averaged, boundsOf, histogramOf, scaled, spreadOf, vertexNormals } from './display-kernels';
 import type {
 	DisplayCall,
@@ -125,7 +125,7 @@ export class DisplayModel {
 		let motion = this.#motions.get(key);
 		if (!motion) {
 			motion = latticeMotion(this.#surface.exact, box);
-			// A dragged box leaves a trail of placements: the last few are enough.
+			// Each edit of a box leaves one behind: the last few are enough.
 			if (this.#motions.size >= KEPT_MOTIONS) this.#motions.clear();
 			this.#motions.set(key, motion);
 		}
@@ -181,7 +181,7 @@ export class DisplayModel {
 
 	#share(box: DesignBox, field: FieldName | null): Share {
 		const { areas, area } = this.#surface;
-		const { inside } = this.#motion(box);
+		const { inside } = embed(this.#surface.exact, box);
 		const values = field ? this.#fields.get(field) : undefined;
 		let within = 0;
 		let part = 0;
