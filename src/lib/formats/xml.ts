@@ -50,7 +50,7 @@ export function readXml(bytes: Uint8Array, stopAt: string): { root: XmlNode; sto
 	const open: XmlNode[] = [];
 	const place = (byte: number) => ({ byte, line: lineAt(bytes, byte) });
 	const cutOff = () =>
-		truncated(`The file ends inside ${open.length > 0 ? `<${open[open.length - 1].name}>` : 'its first tag'}.`, {
+		truncated(`The file ends inside ${open.length > 0 ? `<${shown(open[open.length - 1].name)}>` : 'its first tag'}.`, {
 			byte: bytes.length
 		});
 	for (;;) {
@@ -88,7 +88,7 @@ export function readXml(bytes: Uint8Array, stopAt: string): { root: XmlNode; sto
 			const name = tag.slice(1).trim();
 			if (!node || node.name !== name) {
 				throw syntax(
-					`Line ${lineAt(bytes, from)}: </${shown(name)}> closes ${node ? `<${node.name}>` : 'nothing'}.`,
+					`Line ${lineAt(bytes, from)}: </${shown(name)}> closes ${node ? `<${shown(node.name)}>` : 'nothing'}.`,
 					place(from)
 				);
 			}
