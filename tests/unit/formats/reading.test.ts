@@ -152,6 +152,43 @@ describe('PLY', () => {
 	});
 });
 
+describe('VTP', () => {
+	it('pieces are joined in their order; arrays that one of them lacks are left out', () => {
+		const piece = (x: number, verts: string, more: string) =>
+			`<Piece NumberOfPoints="4" NumberOfPolys="1" NumberOfStrips="1" NumberOfVerts="${verts ? 1 : 0}">` +
+			`<Points><DataArray type="Float32" NumberOfComponents="3">${x} 0 0 ${x + 1} 0 0 ${x} 1 0 ${x + 1} 1 0</DataArray></Points>` +
+			verts +
+			'<Polys><DataArray type="Int32" Name="connectivity">0 1 2</DataArray><DataArray type="Int32" Name="offsets">3</DataArray></Polys>' +
+			'<Strips><DataArray type="Int32" Name="connectivity">0 1 2 3</DataArray><DataArray type="Int32" Name="offsets">4</DataArray></Strips>' +
+			`<PointData><DataArray type="Float64" Name="p">${x} 1 2 3</DataArray>${more}</PointData>` +
+			`<CellData><DataArray type="Int32" Name="c">${verts ? '7 ' : ''}${x} ${x + 1}</DataArray></CellData></Piece>`;
+		const vert =
+			'<Verts><DataArray type="Int32" Name="connectivity">0</DataArray><DataArray type="Int32" Name="offsets">1</DataArray></Verts>';
+		const text = `<VTKFile type="PolyData"><PolyData>${piece(0, '', '<DataArray type="Float64" Name="q">1 2 3 4</DataArray>')}${piece(5, vert, '')}</PolyData></VTKFile>`;
+		const surface = parseSurface(bytes(text), 'a.vtp');
+		// Polygons of both pieces, then the strips of both.
+		expect([...surface.triangles]).toEqual([0, 1, 2, 4, 5, 6, 0, 1, 2, 2, 1, 3, 4, 5, 6, 6, 5, 7]);
+		expect(surface.arrays.map((a) => [a.name, [...a.values]])).toEqual([
+			['p', [0, 1, 2, 3, 5, 1, 2, 3]],
+			['c', [0, 5, 1, 1, 6, 6]]
+		]);
+		expect(surface.notes.map((n) => n.code)).toEqual(expect.arrayContaining(['dropped', 'odd-structure', 'strips']));
+	});
+
+	it.each([
+		['type="PolyData"', 'type="UnstructuredGrid"', 'file-unsupported'],
+		['header_type="UInt64"', 'header_type="UInt16"', 'file-syntax'],
+		['header_type="UInt64"', 'header_type="UInt64" compressor="vtkLZMADataCompressor"', 'file-unsupported'],
+		['</PolyData>', '</Polydata>', 'file-syntax'],
+		['NumberOfPoints="5"', 'NumberOfPoints="500000000"', 'file-syntax']
+	])('%s as %s is refused at its line', async (from, to, code) => {
+		const text = Buffer.from(writeVtp(pyramid())).toString('latin1').replace(from, to);
+		const error = await refusal(() => parseSurface(Buffer.from(text, 'latin1'), 'a.vtp'));
+		expect(error.code).toBe(code);
+		expect(Object.keys(error.place ?? {})).toContain('byte');
+	});
+});
+
 describe('limits and packing', () => {
 	it('too many triangles are refused, from the header where it tells', async () => {
 		const surface = pyramid();
