@@ -1,6 +1,6 @@
 import { MorphError } from './errors';
 import type { BoxOperator } from './operator';
-import { ReducedSystem, type Reduced } from './system';
+import type { ReducedSystem, Reduced } from './system';
 import type { MoveObjective, Surface } from './types';
 
 /** A gradient brought into the reduced space: its row, H^-1 row, and the surface field of H^-1 row. */
