@@ -17,7 +17,8 @@ export default defineConfig({
 		projects: [
 			project('unit'),
 			project('property'),
-			project('reference'),
+			project('reference', { testTimeout: 180_000, hookTimeout: 300_000 }),
+			project('fuzz', { testTimeout: 180_000 }),
 			project('integration', {
 				globalSetup: 'tests/harness/global-setup.ts',
 				pool: 'forks',

@@ -13,7 +13,7 @@ import { ROOT } from './lib/settings.mjs';
 import { runPlaywright, runVitest } from './lib/suites.mjs';
 import { sweep } from './lib/sweep.mjs';
 
-const STAGES = ['check', 'unit', 'property', 'reference', 'integration', 'e2e'];
+const STAGES = ['check', 'unit', 'property', 'reference', 'fuzz', 'integration', 'e2e'];
 const RESULTS = join(ROOT, 'test-results');
 
 await main(async () => {
@@ -104,7 +104,7 @@ function* plan(stages, folder) {
 		}
 	];
 	if (stages.includes('check')) yield ['Format, lint, types, layers', runChecks];
-	const pure = ['unit', 'property', 'reference'].filter((stage) => stages.includes(stage));
+	const pure = ['unit', 'property', 'reference', 'fuzz'].filter((stage) => stages.includes(stage));
 	if (pure.length > 0) yield [`Tests: ${pure.join(', ')}`, () => runVitest('vitest', pure, env)];
 	if (stages.includes('integration') || stages.includes('e2e')) {
 		yield [
