@@ -26,6 +26,8 @@ export default defineConfig({
 	reporter: [['list'], ['json', { outputFile: 'test-results/e2e.json' }]],
 	use: {
 		baseURL,
+		// A control that stays disabled fails its test soon, not at the test's end.
+		actionTimeout: 60_000,
 		viewport: { width: 1440, height: 900 },
 		acceptDownloads: true,
 		screenshot: 'only-on-failure',
