@@ -1,5 +1,6 @@
 /** The one door to PostgreSQL: a Sequelize pool with the models bound to it. */
 import { Sequelize } from 'sequelize';
+import { initAuth } from './models/auth';
 import { initContent } from './models/content';
 import { initPeople } from './models/people';
 import { initShapes } from './models/shapes';
@@ -24,6 +25,7 @@ export function connect(url: string, { connections = 10 }: DatabaseOptions = {})
 		pool: { max: connections, min: 0, idle: 10_000, acquire: 60_000 }
 	});
 	initPeople(sequelize);
+	initAuth(sequelize);
 	initStudies(sequelize);
 	initContent(sequelize);
 	initShapes(sequelize);

@@ -61,7 +61,8 @@ export function initPeople(sequelize: Sequelize) {
 			createdAt: DataTypes.DATE,
 			updatedAt: DataTypes.DATE
 		},
-		{ sequelize, tableName: 'users', ...withTimes }
+		// The name that Auth.js's adapters derive their foreign keys from.
+		{ sequelize, tableName: 'users', name: { singular: 'user', plural: 'users' }, ...withTimes }
 	);
 	ApiTokenModel.init(
 		{
