@@ -88,6 +88,11 @@ export function checkBox(box: DesignBox): void {
 			}
 		}
 	}
+	const points = box.lattice[0] * box.lattice[1] * box.lattice[2];
+	const stray = box.heldPoints?.find((p) => !Number.isInteger(p) || p < 0 || p >= points);
+	if (stray !== undefined) {
+		refuse(`held point ${stray} is not in the lattice.`, `Give indices from 0 to ${points - 1}.`);
+	}
 	if (new Set(box.axes).size !== box.axes.length || box.axes.some((a) => !AXES.includes(a))) {
 		refuse(`the axes ${box.axes.join(', ')} are not a choice of x, y, z.`, 'Give each axis at most once.');
 	}
@@ -98,7 +103,7 @@ export function checkBox(box: DesignBox): void {
 			`Design box "${label}": no control point may move.`,
 			box.axes.length === 0
 				? 'Allow at least one axis.'
-				: 'Hold fewer planes or add control points: along every axis at least one plane must stay free.',
+				: 'Hold fewer planes or points, or add control points: along every axis at least one plane must stay free.',
 			{ box: label }
 		);
 	}
@@ -109,9 +114,13 @@ export function freePoints(box: DesignBox): Uint32Array {
 	const out: number[] = [];
 	const [nu, nv, nw] = box.lattice;
 	const { u0, u1, v0, v1, w0, w1 } = box.held;
+	const byHand = new Set(box.heldPoints);
 	for (let i = u0; i < nu - u1; i++) {
 		for (let j = v0; j < nv - v1; j++) {
-			for (let k = w0; k < nw - w1; k++) out.push(pointIndex(box.lattice, i, j, k));
+			for (let k = w0; k < nw - w1; k++) {
+				const p = pointIndex(box.lattice, i, j, k);
+				if (!byHand.has(p)) out.push(p);
+			}
 		}
 	}
 	return Uint32Array.from(out);

@@ -1,3 +1,4 @@
+import { solveActiveSet } from './active-set';
 import { MorphError } from './errors';
 import { solveQuadraticProgram } from './qp';
 import { combine, dot, type Reduced } from './system';
@@ -13,6 +14,8 @@ export interface LinearConstraint {
 	/** Right-hand side: change of the constrained value by the move. */
 	change: number;
 	label: string;
+	/** By how much an inequality may be broken, in its own unit. */
+	tolerance?: number;
 }
 
 export interface DualSolution {
@@ -20,6 +23,15 @@ export interface DualSolution {
 	mu: number[];
 	active: boolean[];
 }
+
+/** The multipliers as they follow the length factor while the same constraints bind: mu = base + a slope. */
+export interface DualLine {
+	base: number[];
+	slope: number[];
+}
+
+/** Rounding of a slack, relative to the largest. */
+const SLACK = 1e-13;
 
 /** Below this share of a gradient's own size its part inside the lattice counts as none. */
 const NO_INFLUENCE = 1e-24;
@@ -34,9 +46,11 @@ export class DualProblem {
 	private readonly gram: number[][];
 	private readonly along: number[];
 
+	/** @param places how many of the last constraints are places of the surface */
 	constructor(
 		readonly constraints: LinearConstraint[],
-		gradientSolved: Reduced
+		gradientSolved: Reduced,
+		private readonly places = 0
 	) {
 		this.sign = constraints.map((c) => (c.bound === 'atMost' ? -1 : 1));
 		const raw = constraints.map((c) => constraints.map((d) => dot(c.row, d.solved)));
@@ -61,10 +75,41 @@ export class DualProblem {
 		this.along = constraints.map((c, i) => (this.sign[i] * dot(c.row, gradientSolved)) / this.scale[i]);
 	}
 
-	/** Multipliers for the length factor a. */
-	solve(a: number): DualSolution {
-		const m = this.constraints.length;
-		if (m === 0) return { mu: [], active: [] };
+	/**
+	 * Multipliers for the length factor a.
+	 * @param guess constraints that bound at another length factor, to begin with
+	 */
+	solve(a: number, guess?: boolean[]): DualSolution {
+		if (this.constraints.length === 0) return { mu: [], active: [] };
+		return this.places > 0 ? this.solveMany(a, guess) : this.solveFew(a);
+	}
+
+	/** With places of the surface: many rows that nearly repeat each other, of which few bind. */
+	private solveMany(a: number, guess: boolean[] | undefined): DualSolution {
+		const slack = this.constraints.map((c, i) => -a * this.along[i] - (this.sign[i] * c.change) / this.scale[i]);
+		const largest = Math.max(...slack.map(Math.abs));
+		const { multipliers, active, conflict } = solveActiveSet({
+			gram: this.gram,
+			slack,
+			guess,
+			equality: this.constraints.map((c) => c.bound === 'hold'),
+			tolerance: this.constraints.map((c, i) => SLACK * largest + (c.tolerance ?? 0) / this.scale[i])
+		});
+		if (conflict) {
+			throw new MorphError(
+				'constraint-conflict',
+				`The constraints ${this.labels(conflict.map((i) => this.constraints[i]))} contradict each other: no move keeps all of them.`,
+				'Relax or remove one of them, or free more control points.'
+			);
+		}
+		return { mu: multipliers.map((v, i) => (this.sign[i] * v) / this.scale[i]), active };
+	}
+
+	private labels(constraints: LinearConstraint[]): string {
+		return [...new Set(constraints.map((c) => `"${c.label}"`))].join(', ');
+	}
+
+	private solveFew(a: number): DualSolution {
 		// Equalities first, as the solver wants them; in the dual their multipliers are simply free.
 		const gradient = this.constraints.map((c, i) => -(a * this.along[i] + (this.sign[i] * c.change) / this.scale[i]));
 		const inequalities = this.constraints.map((_, i) => i).filter((i) => this.constraints[i].bound !== 'hold');
@@ -84,7 +129,7 @@ export class DualProblem {
 			if (!(error instanceof MorphError)) throw error;
 			throw new MorphError(
 				'constraint-conflict',
-				`The constraints ${this.constraints.map((c) => `"${c.label}"`).join(', ')} repeat or contradict each other inside the boxes.`,
+				`The constraints ${this.labels(this.constraints)} repeat or contradict each other inside the boxes.`,
 				'Remove one of them.'
 			);
 		}
@@ -96,22 +141,36 @@ export class DualProblem {
 		return { mu: x.map((v, i) => (this.sign[i] * v) / this.scale[i]), active };
 	}
 
+	/** The multipliers while exactly these constraints bind. */
+	line(active: boolean[]): DualLine {
+		const kept = this.constraints.map((_, i) => i).filter((i) => active[i]);
+		const of = (right: (i: number) => number) => this.shares(kept, kept.map(right));
+		return {
+			base: of((i) => -(this.sign[i] * this.constraints[i].change) / this.scale[i]),
+			slope: of((i) => -this.along[i])
+		};
+	}
+
 	/**
 	 * A correction that changes one constraint's value and, to first order, none of the other active ones, shortest in
 	 * the metric: returns coefficients of the solved rows.
 	 */
 	correction(index: number, active: boolean[]): number[] {
 		const kept = this.constraints.map((_, i) => i).filter((i) => i === index || active[i]);
-		const result = solveQuadraticProgram({
-			hessian: kept.map((i) => kept.map((j) => this.gram[i][j])),
-			gradient: kept.map((i) => (i === index ? -1 : 0)),
-			rows: [],
-			bounds: [],
-			equalities: 0
-		});
-		const out = new Array<number>(this.constraints.length).fill(0);
-		kept.forEach((i, k) => (out[i] = (this.sign[i] * result.x[k]) / this.scale[i]));
 		// With no other constraint this is H^-1 of the row itself, up to length.
+		return this.shares(
+			kept,
+			kept.map((i) => (i === index ? -1 : 0))
+		);
+	}
+
+	/** Coefficients of the kept constraints' solved rows that minimise 1/2 x'Gx + gradient'x; 0 for the others. */
+	private shares(kept: number[], gradient: number[]): number[] {
+		const out = new Array<number>(this.constraints.length).fill(0);
+		if (kept.length === 0) return out;
+		const hessian = kept.map((i) => kept.map((j) => this.gram[i][j]));
+		const { x } = solveQuadraticProgram({ hessian, gradient, rows: [], bounds: [], equalities: 0 });
+		kept.forEach((i, k) => (out[i] = (this.sign[i] * x[k]) / this.scale[i]));
 		return out;
 	}
 

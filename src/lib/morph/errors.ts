@@ -31,6 +31,9 @@ export type MorphErrorCode =
 	| 'smoothing-invalid'
 	| 'constraint-invalid'
 	| 'constraint-conflict'
+	| 'step-unreachable'
+	| 'symmetry-invalid'
+	| 'hand-invalid'
 	| 'unsupported';
 
 /** Where in the input the fault sits. Counts start at 1 for lines and rows (as an editor shows them), at 0 for the rest. */

@@ -1,104 +1,70 @@
 import { MorphError } from './errors';
-import type { BoxOperator } from './operator';
-import type { ReducedSystem, Reduced } from './system';
+import type { MoveSpace } from './space';
+import type { Reduced } from './system';
 import type { MoveObjective, Surface } from './types';
 
 /** A gradient brought into the reduced space: its row, H^-1 row, and the surface field of H^-1 row. */
 export interface Prepared {
 	row: Reduced;
 	solved: Reduced;
-	lattices: Float64Array[];
 	/** moved.length x 3 */
 	field: Float64Array;
-}
-
-/** Vertices in any of the boxes, and where each box's own vertices stand among them. */
-export class MovedSet {
-	readonly ids: Uint32Array;
-	private readonly slots: (Uint32Array | null)[];
-
-	constructor(
-		readonly operators: BoxOperator[],
-		vertexCount: number
-	) {
-		if (operators.length === 1) {
-			this.ids = operators[0].inside;
-			this.slots = [null];
-			return;
-		}
-		const mark = new Uint8Array(vertexCount);
-		let count = 0;
-		for (const op of operators) {
-			for (const v of op.inside) {
-				if (!mark[v]) {
-					mark[v] = 1;
-					count++;
-				}
-			}
-		}
-		this.ids = new Uint32Array(count);
-		const slot = new Uint32Array(vertexCount);
-		for (let v = 0, at = 0; v < vertexCount; v++) {
-			if (!mark[v]) continue;
-			slot[v] = at;
-			this.ids[at++] = v;
-		}
-		this.slots = operators.map((op) => Uint32Array.from(op.inside, (v) => slot[v]));
-	}
-
-	/** The surface field of lattice displacements (by box, nPoints x 3), summed over the boxes. */
-	evaluate(lattices: Float64Array[]): Float64Array {
-		const single = this.slots[0] === null;
-		if (single) return this.operators[0].evaluate(lattices[0]);
-		const out = new Float64Array(3 * this.ids.length);
-		this.operators.forEach((op, b) => {
-			const part = op.evaluate(lattices[b]);
-			const slots = this.slots[b] as Uint32Array;
-			for (let i = 0; i < slots.length; i++) {
-				const at = 3 * slots[i];
-				out[at] += part[3 * i];
-				out[at + 1] += part[3 * i + 1];
-				out[at + 2] += part[3 * i + 2];
-			}
-		});
-		return out;
-	}
-
-	/** sum over the moved vertices of g . dx, for g of N x 3. */
-	along(gradient: Float64Array, displacement: Float64Array): number {
-		let sum = 0;
-		for (let i = 0; i < this.ids.length; i++) {
-			const v = 3 * this.ids[i];
-			sum +=
-				gradient[v] * displacement[3 * i] +
-				gradient[v + 1] * displacement[3 * i + 1] +
-				gradient[v + 2] * displacement[3 * i + 2];
-		}
-		return sum;
-	}
 }
 
 /** Prepared gradients, kept by the identity of their arrays. */
 export class GradientCache {
 	private readonly kept = new WeakMap<Float64Array, Prepared>();
 
-	constructor(
-		private readonly operators: BoxOperator[],
-		private readonly moved: MovedSet,
-		private readonly system: ReducedSystem
-	) {}
+	constructor(private readonly space: MoveSpace) {}
 
 	get(gradient: Float64Array): Prepared {
 		let prepared = this.kept.get(gradient);
 		if (!prepared) {
-			const row = this.system.reduce(this.operators.map((op) => op.project(gradient)));
-			const solved = this.system.solve(row);
-			const lattices = this.system.expand(solved);
-			prepared = { row, solved, lattices, field: this.moved.evaluate(lattices) };
+			const row = this.space.row(gradient);
+			const solved = this.space.solve(row);
+			prepared = { row, solved, field: this.space.field(solved) };
 			this.kept.set(gradient, prepared);
 		}
 		return prepared;
 	}
+}
+
+/** sum over the moved vertices of g . dx, for g of N x 3 and dx of moved x 3. */
+export function along(gradient: Float64Array, moved: Uint32Array, displacement: Float64Array): number {
+	let sum = 0;
+	for (let i = 0; i < moved.length; i++) {
+		const v = 3 * moved[i];
+		sum +=
+			gradient[v] * displacement[3 * i] +
+			gradient[v + 1] * displacement[3 * i + 1] +
+			gradient[v + 2] * displacement[3 * i + 2];
+	}
+	return sum;
+}
+
+/** sum of factors[k] * fields[k] */
+export function mix(factors: number[], fields: Float64Array[]): Float64Array {
+	const out = new Float64Array(fields[0].length);
+	for (let k = 0; k < fields.length; k++) {
+		const f = factors[k];
+		if (f === 0) continue;
+		const field = fields[k];
+		for (let i = 0; i < out.length; i++) out[i] += f * field[i];
+	}
+	return out;
+}
+
+/** Largest and root mean square length of n vectors. */
+export function displacementNorms(displacement: Float64Array): { max: number; rms: number } {
+	let max = 0;
+	let sum = 0;
+	for (let i = 0; i < displacement.length; i += 3) {
+		const s = displacement[i] ** 2 + displacement[i + 1] ** 2 + displacement[i + 2] ** 2;
+		sum += s;
+		if (s > max) max = s;
+	}
+	const n = displacement.length / 3;
+	return { max: Math.sqrt(max), rms: n > 0 ? Math.sqrt(sum / n) : 0 };
 }
 
 /** Refuses gradients of the wrong length or with entries that are not finite. */

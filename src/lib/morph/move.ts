@@ -1,11 +1,17 @@
 import { checkBox } from './box';
-import { DualProblem, type DualSolution, type LinearConstraint } from './dual';
+import { Descent, type DescentConstraint, type Fitted, type Steering } from './descent';
 import { MorphError } from './errors';
-import { GradientCache, MovedSet, checkObjectives, type Prepared } from './fields';
+import { GradientCache, along, checkObjectives, displacementNorms, mix } from './fields';
+import { handLattices } from './hand';
+import { linearPart, type LinearPart } from './linear-constraints';
 import { BoxOperator } from './operator';
-import { ReducedSystem, combine, dot, type Reduced } from './system';
+import { PlaceRounds, placeSets, type PlaceSet } from './places';
+import { reports } from './reports';
+import { LatticeSpace } from './space';
+import { applyDisplacement } from './store';
+import { onPlane, planeNormal, tieBoxes, type Tie } from './symmetry';
+import { ReducedSystem, combine, dot } from './system';
 import type {
-	ConstraintReport,
 	DesignBox,
 	HandMove,
 	MoveConstraint,
@@ -19,36 +25,11 @@ import type {
 import { VolumeChange, nearRoot } from './volume-change';
 
 const DEFAULT_EPS = 1e-6;
-/** What counts as a descent left over by the constraints, relative to the free one (squared lengths in the metric). */
-const NO_DESCENT = 1e-18;
-const STEP_TOLERANCE = 1e-12;
-const MAX_STEP_ROUNDS = 200;
 /** An inequality on the volume is restored when the curved surface breaks it by more than this share. */
 const VOLUME_SLACK = 1e-13;
-
-/** Largest and root mean square length of n vectors. */
-export function displacementNorms(displacement: Float64Array): { max: number; rms: number } {
-	let max = 0;
-	let sum = 0;
-	for (let i = 0; i < displacement.length; i += 3) {
-		const s = displacement[i] ** 2 + displacement[i + 1] ** 2 + displacement[i + 2] ** 2;
-		sum += s;
-		if (s > max) max = s;
-	}
-	const n = displacement.length / 3;
-	return { max: Math.sqrt(max), rms: n > 0 ? Math.sqrt(sum / n) : 0 };
-}
-
-function mix(factors: number[], fields: Float64Array[]): Float64Array {
-	const out = new Float64Array(fields[0].length);
-	for (let k = 0; k < fields.length; k++) {
-		const f = factors[k];
-		if (f === 0) continue;
-		const field = fields[k];
-		for (let i = 0; i < out.length; i++) out[i] += f * field[i];
-	}
-	return out;
-}
+const MAX_ROUNDS = 60;
+/** Rounds without a smaller violation after which the constraints are taken to be in conflict. */
+const STALLED_ROUNDS = 12;
 
 const direction = (o: MoveObjective) => (o.sense === 'minimise' ? o.weight : o.sense === 'maximise' ? -o.weight : 0);
 
@@ -62,7 +43,7 @@ const direction = (o: MoveObjective) => (o.sense === 'minimise' ? o.weight : o.s
  * @throws MorphError box-invalid, box-empty, no-free-points, smoothing-invalid, metric-singular
  */
 export function prepareMove(surface: Surface, boxes: DesignBox[], options: PrepareOptions): PreparedMove {
-	const { smoothing, eps = DEFAULT_EPS, weights, path = 'auto', checkpoint } = options;
+	const { smoothing, eps = DEFAULT_EPS, weights, symmetry, path = 'auto', checkpoint } = options;
 	if (!Number.isFinite(smoothing) || smoothing < 0) {
 		throw new MorphError(
 			'smoothing-invalid',
@@ -81,8 +62,13 @@ export function prepareMove(surface: Surface, boxes: DesignBox[], options: Prepa
 		throw new MorphError('mesh-shape', 'The vertex weights do not fit the surface.', 'Give N weights in [0, 1].');
 	}
 	boxes.forEach(checkBox);
-	const operators = boxes.map((box) => {
+	const tied = symmetry ? tieBoxes(boxes, symmetry) : null;
+	const operators: BoxOperator[] = [];
+	const standing: number[] = [];
+	(tied?.boxes ?? boxes).forEach((box, b) => {
 		const op = new BoxOperator(box, surface, weights, path);
+		// A half model has nothing in the mirror images of its boxes.
+		if (op.inside.length === 0 && b >= boxes.length) return;
 		if (op.inside.length === 0) {
 			const label = box.name ?? box.id;
 			throw new MorphError(
@@ -92,21 +78,23 @@ export function prepareMove(surface: Surface, boxes: DesignBox[], options: Prepa
 				{ box: label }
 			);
 		}
-		return op;
+		standing.push(b);
+		operators.push(op);
 	});
 	checkpoint?.(0.1);
-	const moved = new MovedSet(operators, n);
-	const system = new ReducedSystem(
-		operators,
-		surface,
-		smoothing,
-		eps,
-		checkpoint && ((f) => checkpoint(0.1 + 0.9 * f))
-	);
-	return new LatticeMove(surface, boxes, operators, moved, system);
+	const ties = tied && {
+		normal: tied.normal,
+		list: tied.ties.map((tie): Tie => ({ ...tie, image: standing.indexOf(tie.image) }))
+	};
+	const report = checkpoint && ((f: number) => checkpoint(0.1 + 0.9 * f));
+	const system = new ReducedSystem(operators, surface, smoothing, eps, ties, report);
+	const plane = symmetry ? { flags: onPlane(surface.positions, symmetry), normal: planeNormal(symmetry) } : null;
+	const space = new LatticeSpace(operators, system, n, plane);
+	return new LatticeMove(surface, boxes.length, operators, ties, space);
 }
 
 class LatticeMove implements PreparedMove {
+	readonly boxes: readonly DesignBox[];
 	readonly moved: Uint32Array;
 	readonly insideCounts: readonly number[];
 	readonly freePoints: readonly number[];
@@ -117,17 +105,18 @@ class LatticeMove implements PreparedMove {
 
 	constructor(
 		private readonly surface: Surface,
-		readonly boxes: readonly DesignBox[],
-		operators: BoxOperator[],
-		private readonly set: MovedSet,
-		private readonly system: ReducedSystem
+		private readonly given: number,
+		private readonly operators: BoxOperator[],
+		private readonly ties: { list: Tie[]; normal: [number, number, number] } | null,
+		private readonly space: LatticeSpace
 	) {
-		this.moved = set.ids;
+		this.boxes = operators.map((op) => op.box);
+		this.moved = space.moved;
 		this.insideCounts = operators.map((op) => op.inside.length);
 		this.freePoints = operators.map((op) => op.free.length);
-		this.unknowns = system.unknowns;
-		this.path = operators.every((op) => op.path === 'direct') ? 'direct' : 'moments';
-		this.gradients = new GradientCache(operators, set, system);
+		this.unknowns = space.unknowns;
+		this.path = operators.some((op) => op.path === 'moments') ? 'moments' : 'direct';
+		this.gradients = new GradientCache(space);
 	}
 
 	private get volumeChange(): VolumeChange {
@@ -141,6 +130,30 @@ class LatticeMove implements PreparedMove {
 			throw new MorphError('step-invalid', `The step ${step} is no length.`, 'Give a step of more than 0 metres.');
 		}
 		checkObjectives(objectives, this.surface);
+		const steering = this.steering(objectives);
+		checkpoint?.(0.4);
+		const byHand = request.hand ? handLattices(request.hand, this.given, this.operators, this.ties) : null;
+		const hand = byHand && this.space.ofLattices(byHand);
+		const linear = this.linearParts(constraints, objectives);
+		const sets = this.placeSets(constraints, step + (hand ? displacementNorms(hand).max : 0));
+		checkpoint?.(0.5);
+		const { fitted, coefficients, descent, rounds } = this.descend(steering, linear, sets, hand, step, checkpoint);
+		checkpoint?.(0.9);
+		const lattices = this.space.lattices(descent.reduced(coefficients));
+		byHand?.forEach((lattice, b) => lattice.forEach((x, i) => (lattices[b][i] += x)));
+		const { displacement, a } = fitted;
+		const prices = this.prices(fitted, linear, sets, rounds);
+		checkpoint?.(1);
+		return {
+			...this.outcome(displacement, objectives, linear, sets, prices),
+			lattices,
+			metricLength: Math.sqrt(descent.squaredLength(coefficients)),
+			stepFactor: a
+		};
+	}
+
+	/** The weighted gradient of the objectives that steer. */
+	private steering(objectives: MoveObjective[]): Steering {
 		const steering = objectives.filter((o) => direction(o) !== 0);
 		if (steering.length === 0) {
 			throw new MorphError(
@@ -150,7 +163,6 @@ class LatticeMove implements PreparedMove {
 			);
 		}
 		const prepared = steering.map((o) => this.gradients.get(o.gradient));
-		checkpoint?.(0.4);
 		const factors = steering.map(direction);
 		const row = combine(
 			factors,
@@ -160,282 +172,202 @@ class LatticeMove implements PreparedMove {
 			factors,
 			prepared.map((p) => p.solved)
 		);
-		const free = dot(row, solved);
-		if (!(free > 0)) {
+		if (!(dot(row, solved) > 0)) {
 			throw new MorphError(
 				'gradient-zero',
 				'The maps of the weighted objectives are zero on everything that may move.',
 				'Place a design box where the map is not zero, or check the map and its sign.'
 			);
 		}
-		const linear = constraints.map((c, i) => this.linear(c, i, objectives));
-		const dual = new DualProblem(
-			linear.map((l) => l.constraint),
-			solved
-		);
-		const fields = [
-			mix(
+		return {
+			row,
+			solved,
+			field: mix(
 				factors,
 				prepared.map((p) => p.field)
-			),
-			...linear.map((l) => l.prepared.field)
-		];
-		checkpoint?.(0.6);
-		const { a, solution, displacement } = this.fitStep(dual, fields, step, solved, row, free);
-		checkpoint?.(0.7);
-		const coefficients = [-a, ...solution.mu];
-		const active = solution.active.slice();
-		const volumeAfter = this.restoreVolume(constraints, linear, dual, active, coefficients, fields, displacement);
-		checkpoint?.(0.9);
-		const parts = [solved, ...linear.map((l) => l.prepared.solved)];
-		const reduced = combine(coefficients, parts);
-		const lattices = this.system.expand(reduced);
-		const metric = dot(reduced, combine(coefficients, [row, ...linear.map((l) => l.prepared.row)]));
+			)
+		};
+	}
+
+	private linearParts(constraints: MoveConstraint[], objectives: MoveObjective[]): LinearPart[] {
+		return constraints.flatMap((c, index) => {
+			if (c.kind === 'volume' || c.kind === 'objective') {
+				return [linearPart(c, index, this.surface, this.gradients, objectives)];
+			}
+			if (c.kind === 'displacement' || c.kind === 'keepOut' || c.kind === 'thickness') return [];
+			throw new MorphError(
+				'unsupported',
+				`Constraints of the kind "${String((c as { kind: unknown }).kind)}" are not available.`,
+				'Use the kinds volume, objective, displacement, keepOut and thickness.',
+				{ constraint: index }
+			);
+		});
+	}
+
+	private placeSets(constraints: MoveConstraint[], reach: number): PlaceSet[] {
+		return constraints.flatMap((c, index) =>
+			c.kind === 'volume' || c.kind === 'objective' ? [] : placeSets(c, index, this.surface, this.moved, reach)
+		);
+	}
+
+	/**
+	 * The move for the linear constraints; then, in rounds, for those of the places that it breaks, each linearised where
+	 * the surface has come to.
+	 */
+	private descend(
+		steering: Steering,
+		linear: LinearPart[],
+		sets: PlaceSet[],
+		hand: Float64Array | null,
+		step: number,
+		checkpoint: MoveRequest['checkpoint']
+	): { fitted: Fitted; coefficients: number[]; descent: Descent; rounds: PlaceRounds | null } {
+		const rounds = sets.length > 0 ? new PlaceRounds(this.space, this.surface, sets, step) : null;
+		const base = linear.map(({ constraint, prepared, gradient, change, label }): DescentConstraint => ({
+			...prepared,
+			bound: constraint.bound,
+			change: hand ? change - along(gradient, this.moved, hand) : change,
+			label
+		}));
+		let best = Infinity;
+		let stalled = 0;
+		for (let round = 0; ; round++) {
+			const placed = rounds?.rows ?? [];
+			const descent = new Descent(this.space, steering, [...base, ...placed], placed.length, hand);
+			const fitted = descent.fit(step);
+			const coefficients = [-fitted.a, ...fitted.mu];
+			this.restoreVolume(linear, descent, fitted, coefficients);
+			if (!rounds) return { fitted, coefficients, descent, rounds };
+			const positions = applyDisplacement(this.surface.positions, this.moved, fitted.displacement);
+			const computed = hand ? mix([1, -1], [fitted.displacement, hand]) : fitted.displacement;
+			const { worst, labels } = rounds.next(positions, computed, fitted.active.slice(base.length));
+			if (worst === 0) return { fitted, coefficients, descent, rounds };
+			// The next round's linear volume takes in how this one's surface curves, so that restoring it moves nothing much.
+			linear.forEach(({ constraint, gradient, change }, i) => {
+				if (constraint.kind !== 'volume') return;
+				const curved = this.volumeChange.cubic(fitted.displacement, null)[0];
+				base[i].change = change - curved + along(gradient, this.moved, computed);
+			});
+			if (worst < 0.7 * best) {
+				best = worst;
+				stalled = 0;
+			} else stalled++;
+			if (stalled > STALLED_ROUNDS || round === MAX_ROUNDS) throw this.conflict(labels, descent, fitted, worst);
+			checkpoint?.(0.5 + 0.4 * (1 - 1 / (2 + round)));
+		}
+	}
+
+	private conflict(broken: string[], descent: Descent, { active }: Fitted, worst: number): MorphError {
+		const with_ = descent.dual.constraints.filter((c, i) => active[i] && !broken.includes(c.label)).map((c) => c.label);
+		const quoted = (labels: string[]) => [...new Set(labels)].map((l) => `"${l}"`).join(', ');
+		return new MorphError(
+			'constraint-conflict',
+			`No move keeps all constraints: ${quoted(broken)} would still be broken by ${worst.toPrecision(3)} m` +
+				(with_.length > 0 ? ` where ${quoted(with_)} must be kept.` : ' where the boxes let the surface move.'),
+			'Relax or remove one of these constraints, take a shorter step, or free more control points.'
+		);
+	}
+
+	/**
+	 * Brings the volume of the curved surface to its bound exactly, along the shortest correction in the metric that
+	 * leaves the other active constraints alone. Changes displacement, coefficients and active in place.
+	 */
+	private restoreVolume(linear: LinearPart[], descent: Descent, fitted: Fitted, coefficients: number[]): void {
+		const { displacement, active } = fitted;
+		linear.forEach(({ constraint, index, limit }, i) => {
+			if (constraint.kind !== 'volume') return;
+			const target = limit - this.surface.volume;
+			if (!active[i]) {
+				const [change] = this.volumeChange.cubic(displacement, null);
+				const slack = VOLUME_SLACK * Math.abs(this.surface.volume);
+				if (constraint.bound === 'atLeast' ? change >= target - slack : change <= target + slack) return;
+				active[i] = true;
+			}
+			const shares = descent.dual.correction(i, active);
+			const correction = descent.field([0, ...shares]);
+			const t = nearRoot(this.volumeChange.cubic(displacement, correction), target);
+			if (t === null || Math.abs(t) * displacementNorms(correction).max > displacementNorms(displacement).max) {
+				throw new MorphError(
+					'constraint-conflict',
+					'The volume cannot be restored after the move.',
+					'Take a shorter step.',
+					{ constraint: index }
+				);
+			}
+			for (let k = 0; k < displacement.length; k++) displacement[k] += t * correction[k];
+			shares.forEach((s, k) => (coefficients[k + 1] += t * s));
+		});
+	}
+
+	/** By report key: whether it binds, its price, and at how many places. */
+	private prices({ a, mu, active }: Fitted, linear: LinearPart[], sets: PlaceSet[], rounds: PlaceRounds | null) {
+		// mu enters as +mu H^-1 c, so the optimum falls by mu / a per unit by which the bound sinks (atLeast: relaxed).
+		const ofLinear = linear.map(({ constraint }, i) => ({
+			active: active[i],
+			price: active[i] ? (constraint.bound === 'atLeast' ? mu[i] : -mu[i]) / a : 0,
+			places: 0
+		}));
+		const ofSets = sets.map((set) => {
+			let price = 0;
+			let places = 0;
+			rounds?.binding.forEach((row, k) => {
+				const i = linear.length + k;
+				if (row.set !== set || !active[i]) return;
+				price += mu[i] / a;
+				places++;
+			});
+			return { active: places > 0, price, places };
+		});
+		return { linear: ofLinear, sets: ofSets };
+	}
+
+	/** What is said of any displacement. */
+	private outcome(
+		displacement: Float64Array,
+		objectives: MoveObjective[],
+		linear: LinearPart[],
+		sets: PlaceSet[],
+		prices: ReturnType<LatticeMove['prices']> | null
+	) {
 		const { max, rms } = displacementNorms(displacement);
 		const predicted = objectives.map((o) => ({
 			objectiveId: o.id,
-			change: this.set.along(o.gradient, displacement)
+			change: along(o.gradient, this.moved, displacement)
 		}));
-		const reports = constraints.map((c, i) =>
-			this.report(c, linear[i].limit, predicted, volumeAfter, active[i], solution.mu[i] / a)
-		);
-		checkpoint?.(1);
+		const volumeBefore = this.surface.volume;
+		const volumeAfter = volumeBefore + this.volumeChange.cubic(displacement, null)[0];
 		return {
-			lattices,
 			moved: this.moved,
 			displacement,
 			predicted,
 			predictedWeighted: objectives.reduce((sum, o, i) => sum + direction(o) * predicted[i].change, 0),
 			maxDisplacement: max,
 			rmsDisplacement: rms,
-			volumeBefore: this.surface.volume,
+			volumeBefore,
 			volumeAfter,
-			constraints: reports,
-			metricLength: Math.sqrt(Math.max(0, metric)),
-			stepFactor: a
+			constraints: reports({
+				surface: this.surface,
+				moved: this.moved,
+				displacement,
+				linear,
+				sets,
+				predicted,
+				volumeAfter,
+				prices
+			})
 		};
 	}
 
-	/** The constraint as a linear one on the displacement, and its bound in its own unit. */
-	private linear(
-		constraint: MoveConstraint,
-		index: number,
-		objectives: MoveObjective[]
-	): { constraint: LinearConstraint; prepared: Prepared; limit: number } {
-		const { bound, value } = constraint;
-		if (value !== undefined && !Number.isFinite(value)) {
-			throw new MorphError('constraint-invalid', `The bound ${value} is no number.`, 'Give a finite bound.', {
-				constraint: index
-			});
-		}
-		if (bound !== 'hold' && bound !== 'atLeast' && bound !== 'atMost') {
-			throw new MorphError(
-				'constraint-invalid',
-				`The bound "${String(bound)}" is unknown.`,
-				'Give hold, atLeast or atMost.',
-				{
-					constraint: index
-				}
-			);
-		}
-		if (constraint.kind === 'volume') {
-			if (!this.surface.watertight) {
-				throw new MorphError(
-					'mesh-open',
-					'The surface is open, so it encloses no volume that a move could keep.',
-					'Close the surface, or remove the volume constraint.',
-					{ constraint: index }
-				);
-			}
-			const prepared = this.gradients.get(this.surface.volumeGradient);
-			const limit = value ?? this.surface.volume;
-			const change = limit - this.surface.volume;
-			return {
-				prepared,
-				limit,
-				constraint: { row: prepared.row, solved: prepared.solved, bound, change, label: 'volume' }
-			};
-		}
-		if (constraint.kind !== 'objective') {
-			throw new MorphError(
-				'unsupported',
-				`Constraints of the kind "${String((constraint as { kind: unknown }).kind)}" are not available.`,
-				'Use the kinds volume and objective.',
-				{ constraint: index }
-			);
-		}
-		const objective = objectives.find((o) => o.id === constraint.objectiveId);
-		if (!objective) {
-			throw new MorphError(
-				'gradient-missing',
-				`The constrained objective "${constraint.objectiveId}" has no map.`,
-				'Upload its map for this shape, or remove the constraint.',
-				{ constraint: index, objective: constraint.objectiveId }
-			);
-		}
-		const prepared = this.gradients.get(objective.gradient);
-		const limit = value ?? 0;
-		return {
-			prepared,
-			limit,
-			constraint: {
-				row: prepared.row,
-				solved: prepared.solved,
-				bound,
-				change: limit,
-				label: `objective ${objective.id}`
-			}
-		};
-	}
-
-	/** The length factor for which the largest displacement is the step. */
-	private fitStep(
-		dual: DualProblem,
-		fields: Float64Array[],
-		step: number,
-		solved: Reduced,
-		row: Reduced,
-		free: number
-	): { a: number; solution: DualSolution; displacement: Float64Array } {
-		const at = (a: number) => {
-			const solution = dual.solve(a);
-			const displacement = mix([-a, ...solution.mu], fields);
-			return { a, solution, displacement, length: displacementNorms(displacement).max };
-		};
-		const stuck = () =>
-			new MorphError(
-				'constraint-conflict',
-				'The constraints leave no direction in which the weighted objective falls.',
-				'Relax a constraint, free more control points, or weight another objective.'
-			);
-		if (dual.constraints.every((c) => c.change === 0)) {
-			const unit = at(1);
-			const left = -dot(row, dual.assemble(1, solved, unit.solution.mu));
-			if (!(left > NO_DESCENT * free) || !(unit.length > 0)) throw stuck();
-			const a = step / unit.length;
-			const displacement = unit.displacement;
-			for (let i = 0; i < displacement.length; i++) displacement[i] *= a;
-			return { a, displacement, solution: { mu: unit.solution.mu.map((m) => m * a), active: unit.solution.active } };
-		}
-		// With bounds away from the present values the move is not proportional to a: first what the bounds alone ask.
-		let low = at(0);
-		if (low.length > step) {
-			throw new MorphError(
-				'constraint-conflict',
-				`The bounds of ${dual.constraints.map((c) => `"${c.label}"`).join(', ')} ask for a displacement of ` +
-					`${low.length.toPrecision(4)} m; the step is ${step} m.`,
-				'Give a longer step, or bounds nearer to the present values.'
-			);
-		}
-		let high = at(step / displacementNorms(fields[0]).max);
-		for (let k = 0; high.length < step; k++) {
-			if (k === 200) throw stuck();
-			low = high;
-			high = at(2 * high.a);
-		}
-		// Bisection with a secant proposal; the largest displacement is continuous and grows in the end.
-		let best = high;
-		for (let k = 0; k < MAX_STEP_ROUNDS && Math.abs(best.length - step) > STEP_TOLERANCE * step; k++) {
-			const secant = low.a + ((high.a - low.a) * (step - low.length)) / (high.length - low.length);
-			const inside = secant > low.a && secant < high.a && k % 3 !== 2;
-			const a = inside ? secant : 0.5 * (low.a + high.a);
-			if (!(a > low.a && a < high.a)) break;
-			best = at(a);
-			if (best.length < step) low = best;
-			else high = best;
-		}
-		return best;
-	}
-
-	/**
-	 * Brings the volume of the curved surface to its bound exactly, along the shortest correction in the metric that
-	 * leaves the other active constraints alone. Changes displacement, coefficients and active in place; returns the
-	 * volume.
-	 */
-	private restoreVolume(
-		constraints: MoveConstraint[],
-		linear: { prepared: Prepared; limit: number }[],
-		dual: DualProblem,
-		active: boolean[],
-		coefficients: number[],
-		fields: Float64Array[],
-		displacement: Float64Array
-	): number {
-		const before = this.surface.volume;
-		if (!this.surface.watertight) return before + this.volumeChange.cubic(displacement, null)[0];
-		let after: number | null = null;
-		for (let i = 0; i < constraints.length; i++) {
-			if (constraints[i].kind !== 'volume') continue;
-			const { bound } = constraints[i];
-			const target = linear[i].limit - before;
-			if (!active[i]) {
-				const [change] = this.volumeChange.cubic(displacement, null);
-				after = before + change;
-				const slack = VOLUME_SLACK * Math.abs(before);
-				if (bound === 'atLeast' ? change >= target - slack : change <= target + slack) continue;
-				active[i] = true;
-			}
-			const shares = dual.correction(i, active);
-			const correction = mix([0, ...shares], fields);
-			const cubic = this.volumeChange.cubic(displacement, correction);
-			const t = nearRoot(cubic, target);
-			if (t === null || Math.abs(t) * displacementNorms(correction).max > displacementNorms(displacement).max) {
-				throw new MorphError(
-					'constraint-conflict',
-					'The volume cannot be restored after the move.',
-					'Take a shorter step.',
-					{ constraint: i }
-				);
-			}
-			for (let k = 0; k < displacement.length; k++) displacement[k] += t * correction[k];
-			shares.forEach((s, k) => (coefficients[k + 1] += t * s));
-			after = before + cubic[0] + t * (cubic[1] + t * (cubic[2] + t * cubic[3]));
-		}
-		return after ?? before + this.volumeChange.cubic(displacement, null)[0];
-	}
-
-	private report(
-		constraint: MoveConstraint,
-		limit: number,
-		predicted: { objectiveId: string; change: number }[],
-		volumeAfter: number,
-		active: boolean,
-		multiplier: number
-	): ConstraintReport {
-		const { kind, bound } = constraint;
-		// mu enters as +mu H^-1 c, so the optimum falls by mu / a per unit by which the bound sinks (atLeast: relaxed).
-		const price = active ? (bound === 'atLeast' ? multiplier : -multiplier) : 0;
-		if (constraint.kind === 'volume') {
-			return { kind, bound, limit, before: this.surface.volume, after: volumeAfter, active, price };
-		}
-		const after = predicted.find((p) => p.objectiveId === constraint.objectiveId)?.change ?? 0;
-		return { kind, objectiveId: constraint.objectiveId, bound, limit, before: 0, after, active, price };
-	}
-
-	applyByHand(lattices: Float64Array[], objectives: MoveObjective[]): HandMove {
+	applyByHand(
+		lattices: (Float64Array | null)[],
+		objectives: MoveObjective[],
+		constraints: MoveConstraint[] = []
+	): HandMove {
 		checkObjectives(objectives, this.surface);
-		this.boxes.forEach((box, b) => {
-			const size = 3 * box.lattice[0] * box.lattice[1] * box.lattice[2];
-			if (lattices.length !== this.boxes.length || lattices[b].length !== size || !lattices[b].every(Number.isFinite)) {
-				throw new MorphError(
-					'box-invalid',
-					`The displacement of design box "${box.name ?? box.id}" does not fit its lattice.`,
-					'Give three finite numbers per control point, for every box.',
-					{ box: box.name ?? box.id }
-				);
-			}
-		});
-		const displacement = this.set.evaluate(lattices);
-		const { max, rms } = displacementNorms(displacement);
-		return {
-			moved: this.moved,
-			displacement,
-			predicted: objectives.map((o) => ({ objectiveId: o.id, change: this.set.along(o.gradient, displacement) })),
-			maxDisplacement: max,
-			rmsDisplacement: rms,
-			volumeBefore: this.surface.volume,
-			volumeAfter: this.surface.volume + this.volumeChange.cubic(displacement, null)[0]
-		};
+		const displacement = this.space.ofLattices(handLattices(lattices, this.given, this.operators, this.ties));
+		const linear = this.linearParts(constraints, objectives);
+		const sets = this.placeSets(constraints, displacementNorms(displacement).max);
+		return this.outcome(displacement, objectives, linear, sets, null);
 	}
 }
 

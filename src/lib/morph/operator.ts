@@ -119,6 +119,26 @@ export class BoxOperator {
 		return out;
 	}
 
+	/**
+	 * Adds B' W f for a field that is `vector` at one vertex and zero elsewhere; nothing when the vertex lies outside.
+	 * @param lattice nPoints x 3, added to
+	 */
+	projectVertex(vertex: number, x: number, y: number, z: number, lattice: Float64Array): void {
+		const i = indexOf(this.inside, vertex);
+		if (i < 0) return;
+		const factor = this.weights ? this.weights[i] : 1;
+		const [u, v, w] = this.bases.map((basis, d) => {
+			const values = new Float64Array(basis.count);
+			evaluateBasis(basis, this.uvw[3 * i + d], values, new Float64Array(basis.count));
+			return values;
+		});
+		this.eachPoint(u, v, w, (p, value) => {
+			lattice[3 * p] += factor * value * x;
+			lattice[3 * p + 1] += factor * value * y;
+			lattice[3 * p + 2] += factor * value * z;
+		});
+	}
+
 	/** Values (and slopes) of the three bases at each vertex inside. */
 	private eachVertex(
 		visit: (i: number, u: Float64Array, v: Float64Array, w: Float64Array, slopes: Float64Array[]) => void
@@ -321,6 +341,19 @@ export class BoxOperator {
 			visit(i, rows, index, used);
 		}
 	}
+}
+
+/** Where a value stands in an ascending list; -1 when it is not there. */
+export function indexOf(list: Uint32Array, value: number): number {
+	let low = 0;
+	let high = list.length - 1;
+	while (low <= high) {
+		const middle = (low + high) >> 1;
+		if (list[middle] === value) return middle;
+		if (list[middle] < value) low = middle + 1;
+		else high = middle - 1;
+	}
+	return -1;
 }
 
 /** Two unit vectors that complete the vertex's normal to a frame (Duff et al. 2017), 6 numbers; any frame without one. */

@@ -26,3 +26,9 @@ export interface PlaceConstraint {
 	 */
 	rows(positions: Float64Array, within: number): PlaceRows;
 }
+
+/** What makes the constraint for some vertices: a prepared keep-out, the rays of a wall. */
+export interface PlaceSource {
+	/** @param vertices ascending ids */
+	place(vertices: Uint32Array): PlaceConstraint;
+}

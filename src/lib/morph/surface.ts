@@ -1,5 +1,6 @@
 import { MorphError } from './errors';
-import type { Checkpoint, Mesh, Surface, WithCheckpoint } from './types';
+import { onPlane } from './symmetry';
+import type { Checkpoint, Mesh, Surface, SymmetryPlane, WithCheckpoint } from './types';
 
 const CHECKPOINT_TRIANGLES = 1 << 17;
 
@@ -17,19 +18,20 @@ export function toMetres(positions: Float32Array, metresPerUnit: number): Float6
 
 /**
  * Whether the boundary of the surface, as a chain of directed edges, is zero: every edge is used equally often in both
- * directions. That is what makes the enclosed volume independent of the origin.
+ * directions. That is what makes the enclosed volume independent of the origin. Edges between two vertices of `ignored`
+ * do not count: a half model is closed by its symmetry plane.
  *
  * Each directed edge adds its hash, with the sign of its direction, to two 32-bit sums; only a zero chain gives zero
  * sums for every hash, and another chain passes with a probability of about 2^-64.
  */
-export function isWatertight(triangles: Uint32Array): boolean {
+export function isWatertight(triangles: Uint32Array, ignored: Uint8Array | null = null): boolean {
 	let sumA = 0;
 	let sumB = 0;
 	for (let i = 0; i < triangles.length; i += 3) {
 		for (let k = 0; k < 3; k++) {
 			const a = triangles[i + k];
 			const b = triangles[i + (k === 2 ? 0 : k + 1)];
-			if (a === b) continue;
+			if (a === b || (ignored && ignored[a] & ignored[b])) continue;
 			const low = a < b ? a : b;
 			const high = a < b ? b : a;
 			let h = Math.imul(low ^ 0x9e3779b9, 0x85ebca6b) ^ Math.imul(high + 0x7f4a7c15, 0xc2b2ae35);
@@ -240,17 +242,21 @@ export function checkMesh(positions: ArrayLike<number>, triangles: Uint32Array):
  * A surface with mass, normals, volume and its gradient.
  * @param positions N x 3 in metres; kept, not copied
  * @param triangles F x 3; kept, not copied
+ * @param options symmetry: the plane of a half model, whose open edges in the plane then count as closed by it
  * @throws MorphError mesh-shape, mesh-non-finite
  */
 export function makeSurface(
 	positions: Float64Array,
 	triangles: Uint32Array,
-	options: { checkpoint?: Checkpoint } = {}
+	options: { checkpoint?: Checkpoint; symmetry?: SymmetryPlane } = {}
 ): Surface {
 	checkMesh(positions, triangles);
-	const watertight = isWatertight(triangles);
+	const closed = isWatertight(triangles);
+	const { symmetry } = options;
+	const half = !closed && symmetry !== undefined && isWatertight(triangles, onPlane(positions, symmetry));
 	const { mass, normals, area } = geometry(positions, triangles, options);
-	const origin = watertight ? boundsCentre(positions) : ([0, 0, 0] as [number, number, number]);
+	// About a point in the plane the missing cap of a half model adds nothing.
+	const origin = closed ? boundsCentre(positions) : half ? symmetry.point : ([0, 0, 0] as [number, number, number]);
 	options.checkpoint?.(1);
 	return {
 		positions,
@@ -260,7 +266,8 @@ export function makeSurface(
 		volumeGradient: volumeGradient(positions, triangles, origin),
 		area,
 		volume: volumeOf(positions, triangles, origin),
-		watertight
+		watertight: closed || half,
+		origin
 	};
 }
 

@@ -1,3 +1,5 @@
+import type { PlaceSource } from './place-rows';
+
 /**
  * Called regularly by long work with the fraction done (0..1). The caller may report it, and may throw from it to
  * cancel: nothing is left half done, since every function returns fresh arrays.
@@ -75,8 +77,20 @@ export interface Surface {
 	area: number;
 	/** m^3, signed. */
 	volume: number;
-	/** Every edge is used equally often in both directions, so that the volume does not depend on the origin. */
+	/**
+	 * Every edge is used equally often in both directions (edges in the symmetry plane of a half model aside), so that the
+	 * volume does not depend on the origin.
+	 */
 	watertight: boolean;
+	/** What the volume is summed about: near the surface; on the symmetry plane of a half model. */
+	origin: [number, number, number];
+}
+
+/** Plane of mirror symmetry, metres. */
+export interface SymmetryPlane {
+	point: [number, number, number];
+	/** Unit. */
+	normal: [number, number, number];
 }
 
 export type MapLocation = 'vertex' | 'face';
@@ -157,6 +171,8 @@ export interface DesignBox {
 	/** B-spline degree 1..3; ignored for Bernstein, whose degree is points - 1 by axis. */
 	degree?: number;
 	held: HeldPlanes;
+	/** Single control points held, ((i*nv)+j)*nw+k; default none. */
+	heldPoints?: readonly number[];
 	/** Axes along which control points may move. */
 	axes: Axis[];
 	/** Whose axes those are. */
@@ -188,6 +204,8 @@ export type MoveConstraint =
 			bound: Bound;
 			/** m^3; default: the parent's volume. */
 			value?: number;
+			/** Triangles that bound the part meant, ascending; default the whole body. */
+			part?: Uint32Array;
 	  }
 	| {
 			kind: 'objective';
@@ -195,14 +213,45 @@ export type MoveConstraint =
 			bound: Bound;
 			/** Bound of the predicted change of the objective over this move, in its unit; default 0. */
 			value?: number;
+	  }
+	| PlaceBound;
+
+/** Displacement along the parent's outward normal, metres: at least -inward, at most outward. */
+export interface DisplacementBound {
+	kind: 'displacement';
+	/** >= 0; how far inward a vertex may go. */
+	inward?: number;
+	/** >= 0; how far outward. */
+	outward?: number;
+	/** Vertices meant, ascending; default all that move. */
+	vertices?: Uint32Array;
+}
+
+/** An inequality at every vertex: kept by rounds that add the violated places. */
+export type PlaceBound =
+	| DisplacementBound
+	| {
+			kind: 'keepOut' | 'thickness';
+			/** Says which in messages: the keep-out's name. */
+			label: string;
+			/** The limit, metres: clearance, least thickness. */
+			limit: number;
+			source: PlaceSource;
+			/** Vertices meant, ascending; default all that move. */
+			vertices?: Uint32Array;
 	  };
 
 export interface MoveRequest extends WithCheckpoint {
 	/** All objectives: those of weight 0 or sense 'hold' are predicted but do not steer. */
 	objectives: MoveObjective[];
-	/** Largest displacement of any vertex, metres, > 0. */
+	/** Largest displacement of any vertex by the computed move, metres, > 0. */
 	step: number;
 	constraints: MoveConstraint[];
+	/**
+	 * Lattice displacements made by hand, by box in the order given (nPoints x 3, metres, world axes; null: none). Added to the
+	 * computed move, which then also makes good what they do to the constraints.
+	 */
+	hand?: (Float64Array | null)[];
 }
 
 export interface PrepareOptions extends WithCheckpoint {
@@ -212,18 +261,32 @@ export interface PrepareOptions extends WithCheckpoint {
 	eps?: number;
 	/** N weights in [0, 1] by vertex (locks, blends); default all 1. Borrowed. */
 	weights?: Float64Array;
+	/**
+	 * Mirror symmetry: every lattice and its mirror image are tied, images that are no given box are added, and vertices on
+	 * the plane stay on it. Default none.
+	 */
+	symmetry?: SymmetryPlane;
 	/** How sums over vertices are formed; 'auto' takes the cheaper. Both give the same within 1e-8 (docs/numerics.md). */
 	path?: 'auto' | 'direct' | 'moments';
 }
 
 export interface ConstraintReport {
+	/** Index of the constraint in the request; a displacement bound has a report for each side. */
+	index: number;
 	kind: MoveConstraint['kind'];
 	objectiveId?: string;
 	bound: Bound;
-	/** The bound itself: m^3, or change in the objective's unit. */
+	/** The bound itself: m^3, change in the objective's unit, metres. */
 	limit: number;
-	before: number;
-	after: number;
+	/** At places: the worst of the vertices meant, null when none comes near the limit; 0 for displacements. */
+	before: number | null;
+	after: number | null;
+	/** Whether it is kept, to the tolerance that docs/numerics.md names. A move by hand alone may break it. */
+	kept: boolean;
+	/** Places at which it binds. */
+	places?: number;
+	/** Where `after` is found, metres. */
+	place?: [number, number, number] | null;
 	/** Whether it binds. */
 	active: boolean;
 	/**
@@ -235,7 +298,10 @@ export interface ConstraintReport {
 }
 
 export interface MoveSolution {
-	/** By box in the order given: displacement of its control points, metres, world axes, nPoints x 3, ((i*nv)+j)*nw+k. */
+	/**
+	 * By box as in `PreparedMove.boxes`: displacement of its control points, metres, world axes, nPoints x 3,
+	 * ((i*nv)+j)*nw+k; empty in surface mode.
+	 */
 	lattices: Float64Array[];
 	/** Vertices in any box, ascending. */
 	moved: Uint32Array;
@@ -268,10 +334,12 @@ export interface HandMove {
 	rmsDisplacement: number;
 	volumeBefore: number;
 	volumeAfter: number;
+	constraints: ConstraintReport[];
 }
 
 /** Keeps the embedding, the moments and the factor of a surface with its boxes. */
 export interface PreparedMove {
+	/** The boxes given, then the mirror images that symmetry added. */
 	readonly boxes: readonly DesignBox[];
 	/** Vertices in any box, ascending. */
 	readonly moved: Uint32Array;
@@ -284,8 +352,11 @@ export interface PreparedMove {
 	readonly path: 'direct' | 'moments';
 	/** Only the small system and sums over the boxes' vertices: quick enough for a slider. */
 	solve(request: MoveRequest): MoveSolution;
-	/** Lattice displacements by box (nPoints x 3, metres, world axes), applied as they are. */
-	applyByHand(lattices: Float64Array[], objectives: MoveObjective[]): HandMove;
+	/**
+	 * Lattice displacements by given box (nPoints x 3, metres, world axes), applied as they are; constraints are reported, not
+	 * enforced.
+	 */
+	applyByHand(lattices: (Float64Array | null)[], objectives: MoveObjective[], constraints?: MoveConstraint[]): HandMove;
 }
 
 export interface StoredPositions {

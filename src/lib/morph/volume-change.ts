@@ -1,4 +1,3 @@
-import { boundsCentre } from './surface';
 import type { Surface } from './types';
 
 /** Triangles with at least one marked vertex, ascending. */
@@ -41,7 +40,7 @@ export class VolumeChange {
 	) {
 		const n = surface.positions.length / 3;
 		this.touched = touchedTriangles(surface.triangles, moved, n);
-		this.centre = surface.watertight ? boundsCentre(surface.positions) : [0, 0, 0];
+		this.centre = surface.origin;
 		this.slot = new Uint32Array(n);
 		for (let i = 0; i < moved.length; i++) this.slot[moved[i]] = i + 1;
 	}

@@ -106,13 +106,18 @@ const MORPH_CODES: Record<MorphErrorCode, ErrorCode> = {
 	'smoothing-invalid': 'invalid',
 	'constraint-invalid': 'invalid',
 	'constraint-conflict': 'infeasible',
+	'step-unreachable': 'infeasible',
+	'symmetry-invalid': 'invalid',
+	'hand-invalid': 'invalid',
 	unsupported: 'unsupported'
 };
 
 /** The recipe's field that an engine's refusal is about, as a JSON pointer. */
 function morphPointer(code: MorphErrorCode, place: MorphPlace | undefined): string | undefined {
 	if (place?.constraint !== undefined) return `/constraints/${place.constraint}`;
-	if (code === 'step-invalid') return '/step';
+	if (code === 'step-invalid' || code === 'step-unreachable') return '/step';
+	if (code === 'symmetry-invalid') return '/symmetry';
+	if (code === 'hand-invalid') return '/hand';
 	if (code === 'smoothing-invalid') return '/smoothing';
 	if (code === 'box-invalid' || code === 'box-empty' || code === 'no-free-points') return '/boxIds';
 	return undefined;

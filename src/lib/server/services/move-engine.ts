@@ -141,13 +141,14 @@ export function moveAnswer(
 		volumeAfter: closed ? solution.volumeAfter : null,
 		constraints: solution.constraints.map((report): ConstraintAnswer => {
 			const { kind, objectiveId, bound, active } = report;
+			if (kind !== 'volume' && kind !== 'objective') throw new Error(`no answer for constraints of kind ${kind}`);
 			const price = active ? report.price : null;
 			if (kind === 'volume') {
 				return { kind, bound, unit: 'm³', before: report.before, after: report.after, active, price };
 			}
 			const unit = objectives.find(({ id }) => id === objectiveId)?.unit ?? '';
 			const before = recipe.parentValues[objectiveId!] ?? null;
-			const after = before === null ? null : before + report.after;
+			const after = before === null || report.after === null ? null : before + report.after;
 			return { kind, objectiveId, bound, unit, before, after, active, price };
 		}),
 		checks: Object.fromEntries(
