@@ -7,8 +7,9 @@ import { linearPart, type LinearPart } from './linear-constraints';
 import { BoxOperator } from './operator';
 import { PlaceRounds, placeSets, type PlaceSet } from './places';
 import { reports } from './reports';
-import { LatticeSpace } from './space';
+import { LatticeSpace, emptyBox, type MoveSpace } from './space';
 import { applyDisplacement } from './store';
+import { SurfaceSpace } from './surface-space';
 import { onPlane, planeNormal, tieBoxes, type Tie } from './symmetry';
 import { ReducedSystem, combine, dot } from './system';
 import type {
@@ -63,21 +64,19 @@ export function prepareMove(surface: Surface, boxes: DesignBox[], options: Prepa
 	}
 	boxes.forEach(checkBox);
 	const tied = symmetry ? tieBoxes(boxes, symmetry) : null;
+	const plane = symmetry ? { flags: onPlane(surface.positions, symmetry), normal: planeNormal(symmetry) } : null;
+	if (options.mode === 'surface') {
+		const space = new SurfaceSpace(surface, tied?.boxes ?? boxes, boxes.length, smoothing, weights, plane);
+		checkpoint?.(1);
+		return new Move(surface, boxes, space, space.insideCounts.slice(0, boxes.length), null);
+	}
 	const operators: BoxOperator[] = [];
 	const standing: number[] = [];
 	(tied?.boxes ?? boxes).forEach((box, b) => {
 		const op = new BoxOperator(box, surface, weights, path);
 		// A half model has nothing in the mirror images of its boxes.
 		if (op.inside.length === 0 && b >= boxes.length) return;
-		if (op.inside.length === 0) {
-			const label = box.name ?? box.id;
-			throw new MorphError(
-				'box-empty',
-				`Design box "${label}" holds no vertex of the surface.`,
-				'Move or enlarge the box until it meets the surface.',
-				{ box: label }
-			);
-		}
+		if (op.inside.length === 0) throw emptyBox(box);
 		standing.push(b);
 		operators.push(op);
 	});
@@ -88,35 +87,65 @@ export function prepareMove(surface: Surface, boxes: DesignBox[], options: Prepa
 	};
 	const report = checkpoint && ((f: number) => checkpoint(0.1 + 0.9 * f));
 	const system = new ReducedSystem(operators, surface, smoothing, eps, ties, report);
-	const plane = symmetry ? { flags: onPlane(surface.positions, symmetry), normal: planeNormal(symmetry) } : null;
 	const space = new LatticeSpace(operators, system, n, plane);
-	return new LatticeMove(surface, boxes.length, operators, ties, space);
+	const inside = operators.map((op) => op.inside.length);
+	return new Move(
+		surface,
+		operators.map((op) => op.box),
+		space,
+		inside,
+		{
+			given: boxes.length,
+			operators,
+			ties,
+			space
+		}
+	);
 }
 
-class LatticeMove implements PreparedMove {
-	readonly boxes: readonly DesignBox[];
+/** What a move by control points has besides its space. */
+interface Lattices {
+	given: number;
+	operators: BoxOperator[];
+	ties: { list: Tie[]; normal: [number, number, number] } | null;
+	space: LatticeSpace;
+}
+
+class Move implements PreparedMove {
 	readonly moved: Uint32Array;
-	readonly insideCounts: readonly number[];
 	readonly freePoints: readonly number[];
 	readonly unknowns: number;
 	readonly path: 'direct' | 'moments';
 	private readonly gradients: GradientCache;
 	private volumes: VolumeChange | null = null;
 
+	/** @param lattices null in surface mode */
 	constructor(
 		private readonly surface: Surface,
-		private readonly given: number,
-		private readonly operators: BoxOperator[],
-		private readonly ties: { list: Tie[]; normal: [number, number, number] } | null,
-		private readonly space: LatticeSpace
+		readonly boxes: readonly DesignBox[],
+		private readonly space: MoveSpace,
+		readonly insideCounts: readonly number[],
+		private readonly lattices: Lattices | null
 	) {
-		this.boxes = operators.map((op) => op.box);
 		this.moved = space.moved;
-		this.insideCounts = operators.map((op) => op.inside.length);
-		this.freePoints = operators.map((op) => op.free.length);
+		this.freePoints = lattices?.operators.map((op) => op.free.length) ?? boxes.map(() => 0);
 		this.unknowns = space.unknowns;
-		this.path = operators.some((op) => op.path === 'moments') ? 'moments' : 'direct';
+		this.path = lattices?.operators.some((op) => op.path === 'moments') ? 'moments' : 'direct';
 		this.gradients = new GradientCache(space);
+	}
+
+	/** The control points' displacements made by hand, images filled in. */
+	private byHand(hand: (Float64Array | null)[]): { lattices: Float64Array[]; field: Float64Array } {
+		if (!this.lattices) {
+			throw new MorphError(
+				'hand-invalid',
+				'In surface mode there are no control points to move by hand.',
+				'Choose the mode lattice, or leave the hand-made displacement out.'
+			);
+		}
+		const { given, operators, ties, space } = this.lattices;
+		const lattices = handLattices(hand, given, operators, ties);
+		return { lattices, field: space.ofLattices(lattices) };
 	}
 
 	private get volumeChange(): VolumeChange {
@@ -132,15 +161,15 @@ class LatticeMove implements PreparedMove {
 		checkObjectives(objectives, this.surface);
 		const steering = this.steering(objectives);
 		checkpoint?.(0.4);
-		const byHand = request.hand ? handLattices(request.hand, this.given, this.operators, this.ties) : null;
-		const hand = byHand && this.space.ofLattices(byHand);
+		const byHand = request.hand ? this.byHand(request.hand) : null;
+		const hand = byHand?.field ?? null;
 		const linear = this.linearParts(constraints, objectives);
 		const sets = this.placeSets(constraints, step + (hand ? displacementNorms(hand).max : 0));
 		checkpoint?.(0.5);
 		const { fitted, coefficients, descent, rounds } = this.descend(steering, linear, sets, hand, step, checkpoint);
 		checkpoint?.(0.9);
 		const lattices = this.space.lattices(descent.reduced(coefficients));
-		byHand?.forEach((lattice, b) => lattice.forEach((x, i) => (lattices[b][i] += x)));
+		byHand?.lattices.forEach((lattice, b) => lattice.forEach((x, i) => (lattices[b][i] += x)));
 		const { displacement, a } = fitted;
 		const prices = this.prices(fitted, linear, sets, rounds);
 		checkpoint?.(1);
@@ -327,7 +356,7 @@ class LatticeMove implements PreparedMove {
 		objectives: MoveObjective[],
 		linear: LinearPart[],
 		sets: PlaceSet[],
-		prices: ReturnType<LatticeMove['prices']> | null
+		prices: ReturnType<Move['prices']> | null
 	) {
 		const { max, rms } = displacementNorms(displacement);
 		const predicted = objectives.map((o) => ({
@@ -364,7 +393,7 @@ class LatticeMove implements PreparedMove {
 		constraints: MoveConstraint[] = []
 	): HandMove {
 		checkObjectives(objectives, this.surface);
-		const displacement = this.space.ofLattices(handLattices(lattices, this.given, this.operators, this.ties));
+		const displacement = this.byHand(lattices).field;
 		const linear = this.linearParts(constraints, objectives);
 		const sets = this.placeSets(constraints, displacementNorms(displacement).max);
 		return this.outcome(displacement, objectives, linear, sets, null);

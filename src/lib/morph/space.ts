@@ -1,7 +1,9 @@
+import { MorphError } from './errors';
 import { MovedSet } from './moved-set';
 import type { BoxOperator } from './operator';
 import type { PlaceRows } from './place-rows';
 import type { Reduced, ReducedSystem } from './system';
+import type { DesignBox } from './types';
 
 type Vec3 = readonly [number, number, number];
 
@@ -94,3 +96,12 @@ export class LatticeSpace implements MoveSpace {
 		return field;
 	}
 }
+
+/** The refusal of a box that meets nothing. */
+export const emptyBox = (box: DesignBox) =>
+	new MorphError(
+		'box-empty',
+		`Design box "${box.name ?? box.id}" holds no vertex of the surface.`,
+		'Move or enlarge the box until it meets the surface.',
+		{ box: box.name ?? box.id }
+	);

@@ -255,6 +255,8 @@ export interface MoveRequest extends WithCheckpoint {
 }
 
 export interface PrepareOptions extends WithCheckpoint {
+	/** 'lattice' (default): control points move the surface; 'surface': every vertex in the boxes along its normal. */
+	mode?: 'lattice' | 'surface';
 	/** Smoothing length r in metres, >= 0. */
 	smoothing: number;
 	/** Regularisation of the metric: eps times its mean diagonal is added to the diagonal. Default 1e-6. */
