@@ -1,6 +1,6 @@
-import { weldTriangles, type WithCheckpoint } from '$lib/morph';
+import { edgeTable, weldTriangles, type WithCheckpoint } from '$lib/morph';
 import { countUnused } from './assemble';
-import { countLoops, edgeTable } from './half-edges';
+import { countLoops } from './half-edges';
 import { findDuplicates, isDegenerate, type HealthMesh } from './mesh-checks';
 import { examineParts, type PartHealth } from './parts';
 import { selfIntersections } from './self-intersection';

@@ -1,4 +1,5 @@
-import { edgeTable, partsOf, type EdgeTable } from './half-edges';
+import { edgeTable, type EdgeTable } from '$lib/morph';
+import { partsOf } from './half-edges';
 import type { HealthMesh } from './mesh-checks';
 
 export interface PartHealth {

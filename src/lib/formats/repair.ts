@@ -1,5 +1,4 @@
-import { weldTriangles, type Patch } from '$lib/morph';
-import { edgeTable } from './half-edges';
+import { edgeTable, weldTriangles, type Patch } from '$lib/morph';
 import { findDuplicates, isDegenerate } from './mesh-checks';
 import { examineParts } from './parts';
 

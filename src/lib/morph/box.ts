@@ -20,7 +20,7 @@ export function pointIndex(lattice: readonly [number, number, number], i: number
 }
 
 /** Columns of the box's rotation, 9 numbers: axis u, axis v, axis w in world coordinates. */
-export function boxAxes(box: DesignBox): Float64Array {
+export function boxAxes(box: { readonly rotation: readonly [number, number, number, number] }): Float64Array {
 	const [x, y, z, w] = box.rotation;
 	const s = 2 / (x * x + y * y + z * z + w * w);
 	return Float64Array.of(

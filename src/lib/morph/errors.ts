@@ -34,6 +34,11 @@ export type MorphErrorCode =
 	| 'step-unreachable'
 	| 'symmetry-invalid'
 	| 'hand-invalid'
+	| 'keep-out-invalid'
+	| 'keep-out-open'
+	| 'thickness-invalid'
+	| 'lock-invalid'
+	| 'part-invalid'
 	| 'unsupported';
 
 /** Where in the input the fault sits. Counts start at 1 for lines and rows (as an editor shows them), at 0 for the rest. */

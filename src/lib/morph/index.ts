@@ -15,3 +15,7 @@ export { computeMove, prepareMove } from './move';
 export { latticeMotion, type LatticeMotion } from './motion';
 export { applyDisplacement, storePositions } from './store';
 export { checkMove, type CheckMoveInput } from './checks';
+export { edgeTable, type EdgeTable } from './half-edges';
+export { type PlaceConstraint, type PlaceRows } from './place-rows';
+export { prepareKeepOut, type KeepOutGeometry, type KeepOutSide, type PreparedKeepOut } from './keep-out';
+export { lockWeights, type SurfaceLock } from './locks';

@@ -109,6 +109,11 @@ const MORPH_CODES: Record<MorphErrorCode, ErrorCode> = {
 	'step-unreachable': 'infeasible',
 	'symmetry-invalid': 'invalid',
 	'hand-invalid': 'invalid',
+	'keep-out-invalid': 'invalid',
+	'keep-out-open': 'invalid',
+	'thickness-invalid': 'invalid',
+	'lock-invalid': 'invalid',
+	'part-invalid': 'invalid',
 	unsupported: 'unsupported'
 };
 
