@@ -10,7 +10,8 @@ import * as s from './schemas';
 export type Access = 'public' | 'user' | 'viewer' | 'reviewer' | 'engineer' | 'admin';
 
 /** What the `{id}` of the path names; the study whose role counts is found through it. */
-export type Subject = 'study' | 'shape' | 'topology' | 'map' | 'box' | 'objective' | 'job' | 'user' | 'token' | 'none';
+export type Subject =
+	'study' | 'shape' | 'topology' | 'map' | 'box' | 'keepOut' | 'lock' | 'objective' | 'job' | 'user' | 'token' | 'none';
 
 export interface Operation {
 	method: 'GET' | 'POST' | 'PUT' | 'PATCH' | 'DELETE';
@@ -163,7 +164,7 @@ export const operations = {
 		summary: 'A new version of a design box; moves made before keep theirs',
 		access: 'engineer',
 		subject: 'box',
-		body: s.boxCreate,
+		body: s.boxReplace,
 		status: 200,
 		answer: s.box
 	}),
@@ -184,6 +185,104 @@ export const operations = {
 		subject: 'box',
 		status: 200,
 		answer: s.box
+	}),
+
+	createKeepOut: op({
+		method: 'POST',
+		path: '/api/studies/{id}/keep-outs',
+		summary: 'Add a keep-out',
+		access: 'reviewer',
+		subject: 'study',
+		body: s.keepOutCreate,
+		status: 201,
+		answer: s.keepOut
+	}),
+	replaceKeepOut: op({
+		method: 'PUT',
+		path: '/api/keep-outs/{id}',
+		summary: 'A new version of a keep-out; moves made before keep theirs',
+		access: 'reviewer',
+		subject: 'keepOut',
+		body: s.keepOutReplace,
+		status: 200,
+		answer: s.keepOut
+	}),
+	removeKeepOut: op({
+		method: 'DELETE',
+		path: '/api/keep-outs/{id}',
+		summary: 'Put a keep-out away; its history stays',
+		access: 'reviewer',
+		subject: 'keepOut',
+		status: 200,
+		answer: s.keepOut
+	}),
+	restoreKeepOut: op({
+		method: 'POST',
+		path: '/api/keep-outs/{id}/restore',
+		summary: 'Bring a keep-out back',
+		access: 'reviewer',
+		subject: 'keepOut',
+		status: 200,
+		answer: s.keepOut
+	}),
+	importKeepOut: op({
+		method: 'POST',
+		path: '/api/studies/{id}/keep-outs/mesh',
+		summary: 'Upload a closed surface as keep-out',
+		access: 'reviewer',
+		subject: 'study',
+		query: s.keepOutImportQuery,
+		body: 'bytes',
+		status: 202,
+		answer: s.jobAccepted
+	}),
+	getKeepOutMesh: op({
+		method: 'GET',
+		path: '/api/keep-outs/{id}/mesh',
+		summary:
+			'An uploaded keep-out’s surface: uint32 vertices, uint32 triangles, float32 positions in the study’s unit, uint32 corners',
+		access: 'viewer',
+		subject: 'keepOut',
+		status: 200,
+		answer: 'bytes'
+	}),
+	createLock: op({
+		method: 'POST',
+		path: '/api/studies/{id}/locks',
+		summary: 'Add a lock',
+		access: 'engineer',
+		subject: 'study',
+		body: s.lockCreate,
+		status: 201,
+		answer: s.lock
+	}),
+	replaceLock: op({
+		method: 'PUT',
+		path: '/api/locks/{id}',
+		summary: 'A new version of a lock; moves made before keep theirs',
+		access: 'engineer',
+		subject: 'lock',
+		body: s.lockReplace,
+		status: 200,
+		answer: s.lock
+	}),
+	removeLock: op({
+		method: 'DELETE',
+		path: '/api/locks/{id}',
+		summary: 'Put a lock away; its history stays',
+		access: 'engineer',
+		subject: 'lock',
+		status: 200,
+		answer: s.lock
+	}),
+	restoreLock: op({
+		method: 'POST',
+		path: '/api/locks/{id}/restore',
+		summary: 'Bring a lock back',
+		access: 'engineer',
+		subject: 'lock',
+		status: 200,
+		answer: s.lock
 	}),
 
 	listShapes: op({

@@ -12,6 +12,12 @@ const note = z.string().trim().max(2000);
 
 export const id = z.uuid();
 export const vec3 = z.tuple([finite, finite, finite]);
+/** A plane by a point and its unit normal, metres. */
+export const plane = z.object({
+	point: vec3.describe('m'),
+	normal: vec3.refine((n) => Math.abs(Math.hypot(...n) - 1) < 1e-6, 'must have length 1')
+});
+export type Plane = z.infer<typeof plane>;
 export const timestamp = z.iso.datetime();
 
 export const lengthUnit = z.enum(['m', 'mm', 'cm', 'in']);
@@ -72,6 +78,16 @@ export const tokenCreated = token.extend({ token: z.string().describe('shown onc
 export const sense = z.enum(['minimise', 'maximise', 'hold']);
 export type Sense = z.infer<typeof sense>;
 
+export const rehearsal = z
+	.object({
+		kind: z.enum(['wettedArea', 'volume', 'frontalArea', 'impactDrag']),
+		direction: plane.shape.normal.optional().describe('unit, of the flow; for frontalArea and impactDrag. Default: +x'),
+		stagnation: positive.max(10).optional().describe('largest pressure coefficient of impactDrag; default 2 (Newton)'),
+		patches: z.array(z.string().max(200)).max(1000).optional().describe('default: the whole surface')
+	})
+	.describe('a built-in analytic objective, for trying boxes and constraints with no solver: not a flow solution');
+export type Rehearsal = z.infer<typeof rehearsal>;
+
 export const objectiveCreate = z.object({
 	name,
 	unit: z.string().trim().max(24).describe('of the value the solver returns; "1" or empty for a coefficient'),
@@ -116,6 +132,7 @@ export const studyUpdate = z.object({
 	referenceArea: positive.nullable().optional(),
 	density: positive.nullable().optional(),
 	speed: positive.nullable().optional(),
+	symmetry: plane.nullable().optional().describe('plane of mirror symmetry that moves keep'),
 	note: note.optional()
 });
 export const studySummary = z.object({
@@ -139,20 +156,26 @@ export const held = z
 	.describe('planes of control points held at each face: 1 joins continuously, 2 with tangent, 3 with curvature');
 export type Held = z.infer<typeof held>;
 
+const rotation = z
+	.tuple([finite, finite, finite, finite])
+	.refine((q) => Math.abs(Math.hypot(...q) - 1) < 1e-6, 'must be a unit quaternion')
+	.default([0, 0, 0, 1])
+	.describe('unit quaternion x, y, z, w turning box axes into the study’s frame');
 const latticeCount = z.int().min(2).max(20);
 const boxFields = {
 	name,
 	centre: vec3.describe('m'),
 	halfSize: z.tuple([positive, positive, positive]).describe('m, along the box’s own axes'),
-	rotation: z
-		.tuple([finite, finite, finite, finite])
-		.refine((q) => Math.abs(Math.hypot(...q) - 1) < 1e-6, 'must be a unit quaternion')
-		.default([0, 0, 0, 1])
-		.describe('unit quaternion x, y, z, w turning box axes into the study’s frame'),
+	rotation,
 	lattice: z.tuple([latticeCount, latticeCount, latticeCount]).describe('control points along u, v, w'),
 	basis: z.enum(['bernstein', 'bspline']).default('bernstein'),
 	degree: z.int().min(1).max(3).optional().describe('of the B-spline; Bernstein uses points - 1'),
 	held: held.default({ u0: 0, u1: 0, v0: 0, v1: 0, w0: 0, w1: 0 }),
+	heldPoints: z
+		.array(z.int().min(0).max(3999))
+		.max(4000)
+		.default([])
+		.describe('single control points held, ((i*nv)+j)*nw+k'),
 	axes: z
 		.array(z.enum(['x', 'y', 'z']))
 		.min(1)
@@ -161,11 +184,15 @@ const boxFields = {
 		.default(['x', 'y', 'z']),
 	frame: z.enum(['box', 'world']).default('box').describe('whose axes `axes` names')
 };
-export const boxCreate = z.object(boxFields).refine((b) => b.lattice[0] * b.lattice[1] * b.lattice[2] <= 4000, {
-	message: 'more than 4,000 control points in all',
-	path: ['lattice']
-});
+const latticeSize = [
+	(b: { lattice: [number, number, number] }) => b.lattice[0] * b.lattice[1] * b.lattice[2] <= 4000,
+	{ message: 'more than 4,000 control points in all', path: ['lattice'] }
+] as [(b: { lattice: [number, number, number] }) => boolean, { message: string; path: string[] }];
+export const boxCreate = z.object(boxFields).refine(...latticeSize);
 export type BoxCreate = z.infer<typeof boxCreate>;
+/** Which version a change was made on. */
+const basedOn = z.int().min(1).optional().describe('the version that the change was made on; another by now: 409');
+export const boxReplace = z.object({ ...boxFields, version: basedOn }).refine(...latticeSize);
 export const box = z.object({
 	...boxFields,
 	id,
@@ -175,13 +202,99 @@ export const box = z.object({
 });
 export type Box = z.infer<typeof box>;
 
+// --- keep-outs, locks ------------------------------------------------------------------------------------------------
+
+export const keepOutSide = z.enum(['outside', 'inside']).describe('where the surface must stay');
+const halfSpace = z.object({
+	kind: z.literal('halfSpace'),
+	point: vec3.describe('m, on the plane'),
+	normal: plane.shape.normal.describe('unit, out of the half that is kept out')
+});
+const keepOutBox = z.object({
+	kind: z.literal('box'),
+	centre: vec3.describe('m'),
+	halfSize: z.tuple([positive, positive, positive]).describe('m'),
+	rotation
+});
+const keepOutMesh = z.object({
+	kind: z.literal('mesh'),
+	filename: z.string(),
+	vertexCount: z.int(),
+	triangleCount: z.int(),
+	bounds: z.object({ min: vec3, max: vec3 }).describe('m')
+});
+const keepOutFields = {
+	name,
+	side: keepOutSide.default('outside'),
+	clearance: finite.min(0).max(1000).default(0).describe('m: least distance from it')
+};
+export const keepOutCreate = z.object({
+	...keepOutFields,
+	geometry: z.discriminatedUnion('kind', [halfSpace, keepOutBox])
+});
+export const keepOutReplace = z.object({
+	...keepOutFields,
+	geometry: z
+		.discriminatedUnion('kind', [halfSpace, keepOutBox])
+		.optional()
+		.describe('left out for an uploaded surface'),
+	version: basedOn
+});
+export const keepOutDefinition = z.object({
+	...keepOutFields,
+	geometry: z.discriminatedUnion('kind', [halfSpace, keepOutBox, keepOutMesh])
+});
+export type KeepOutDefinition = z.infer<typeof keepOutDefinition>;
+export const keepOut = keepOutDefinition.extend({ id, studyId: id, version: z.int(), updatedAt: timestamp });
+export type KeepOut = z.infer<typeof keepOut>;
+export const keepOutImportQuery = z.object({
+	filename: z.string().min(1).max(255),
+	name: name.optional(),
+	side: keepOutSide.default('outside'),
+	clearance: z.coerce.number().min(0).max(1000).default(0).describe('m')
+});
+
+const lockFields = {
+	name,
+	patches: z.array(z.string().max(200)).max(1000).default([]).describe('names of locked patches'),
+	painted: z
+		.object({
+			topologyId: id.describe('of the shapes that the triangles are of'),
+			ranges: z
+				.array(z.int().min(0))
+				.max(400_000)
+				.refine((r) => r.length % 2 === 0, 'must hold pairs')
+				.describe('first triangle and number of triangles of each run, ascending')
+		})
+		.nullable()
+		.default(null),
+	blend: finite
+		.min(0)
+		.max(1000)
+		.default(0)
+		.describe('m along the surface over which the move grows from nothing to whole')
+};
+const locksSomething = [
+	(l: { patches: string[]; painted: { ranges: number[] } | null }) =>
+		l.patches.length > 0 || (l.painted !== null && l.painted.ranges.length > 0),
+	{ message: 'names no patch and no triangle', path: ['patches'] }
+] as [(l: { patches: string[]; painted: { ranges: number[] } | null }) => boolean, { message: string; path: string[] }];
+export const lockCreate = z.object(lockFields).refine(...locksSomething);
+export type LockCreate = z.infer<typeof lockCreate>;
+export const lockReplace = z.object({ ...lockFields, version: basedOn }).refine(...locksSomething);
+export const lock = z.object({ ...lockFields, id, studyId: id, version: z.int(), updatedAt: timestamp });
+export type Lock = z.infer<typeof lock>;
+
 export const study = studySummary.extend({
 	referenceArea: finite.nullable(),
 	density: finite.nullable(),
 	speed: finite.nullable(),
 	objectives: z.array(objective),
 	operatingPoints: z.array(operatingPoint),
-	boxes: z.array(box)
+	symmetry: plane.nullable(),
+	boxes: z.array(box),
+	keepOuts: z.array(keepOut),
+	locks: z.array(lock)
 });
 export type Study = z.infer<typeof study>;
 
@@ -256,11 +369,15 @@ export type Result = z.infer<typeof result>;
 // --- moves -----------------------------------------------------------------------------------------------------------
 
 export const bound = z.enum(['hold', 'atLeast', 'atMost']);
+const patchNames = z.array(z.string().max(200)).min(1).max(1000);
 export const constraintRequest = z.discriminatedUnion('kind', [
 	z.object({
 		kind: z.literal('volume'),
 		bound: bound.default('hold'),
-		value: positive.optional().describe('m^3; default: the parent’s volume')
+		value: positive.optional().describe('m^3; default: the parent’s volume'),
+		patches: patchNames
+			.optional()
+			.describe('the part that these bound, each open edge closed by a fan to its middle; default: the whole body')
 	}),
 	z.object({
 		kind: z.literal('objective'),
@@ -271,20 +388,62 @@ export const constraintRequest = z.discriminatedUnion('kind', [
 			.describe(
 				'in the objective’s unit; needs a result of the parent shape. Default: the parent’s own value, whatever it is'
 			)
+	}),
+	z
+		.object({
+			kind: z.literal('displacement'),
+			inward: finite.min(0).max(1000).optional().describe('m: how far inward a vertex may go'),
+			outward: finite.min(0).max(1000).optional().describe('m: how far outward'),
+			boxId: id.optional().describe('where it holds; default: everywhere'),
+			patches: patchNames.optional().describe('where it holds; default: everywhere')
+		})
+		.refine((c) => c.inward !== undefined || c.outward !== undefined, {
+			message: 'needs inward, outward or both',
+			path: ['inward']
+		}),
+	z.object({
+		kind: z.literal('keepOut'),
+		keepOutId: id,
+		clearance: finite.min(0).max(1000).optional().describe('m; default: the keep-out’s own')
+	}),
+	z.object({
+		kind: z.literal('thickness'),
+		least: positive.max(1000).describe('m, along rays inward from the surface'),
+		patches: patchNames.optional().describe('where it holds; default: everywhere')
+	}),
+	z.object({
+		kind: z.literal('radius'),
+		least: positive
+			.max(1000)
+			.describe('m: smallest radius of convex curvature in the moved area. Not steered by: a hard check')
 	})
 ]);
 export type ConstraintRequest = z.infer<typeof constraintRequest>;
 
+export const handMove = z.object({
+	boxId: id,
+	displacement: z
+		.array(finite)
+		.max(12_000)
+		.describe('m; x, y, z of each control point, u slowest, w fastest: as many as the box has')
+});
 export const recipeRequest = z.object({
 	boxIds: z.array(id).min(1).max(32),
 	mode: z.enum(['lattice', 'surface']).default('lattice'),
 	step: positive.max(1000).describe('m: the largest displacement of any vertex'),
 	smoothing: finite.min(0).max(1000).default(0).describe('m: the length below which the move carries no detail'),
-	weights: z.record(id, finite).optional().describe('by objective; default: the study’s'),
+	weights: z.record(id, finite.min(0)).optional().describe('by objective; default: the study’s'),
 	constraints: z
 		.array(constraintRequest)
 		.max(64)
-		.default([{ kind: 'volume', bound: 'hold' }])
+		.default([{ kind: 'volume', bound: 'hold' }]),
+	lockIds: z.array(id).max(200).optional().describe('default: all locks of the study'),
+	symmetry: z.boolean().optional().describe('keep the study’s symmetry plane; default: yes, where it has one'),
+	hand: z.array(handMove).max(32).default([]).describe('control points moved by hand'),
+	handMode: z
+		.enum(['add', 'replace'])
+		.default('add')
+		.describe('add: to the computed move, which makes good what it does to the constraints; replace: alone, as it is')
 });
 export type RecipeRequest = z.infer<typeof recipeRequest>;
 export type RecipeInput = z.input<typeof recipeRequest>;
@@ -305,6 +464,11 @@ export const recipe = z.object({
 		.record(id, finite)
 		.describe('share of each map in the gradient of its objective: operating points by weight, sum 1'),
 	senses: z.record(id, sense).describe('of the objectives when the move was made'),
+	symmetry: plane.nullable().describe('the plane kept, if any'),
+	locks: z.array(lock).describe('as they were when the move was made'),
+	keepOuts: z.array(keepOut).describe('those that the constraints name, as they were when the move was made'),
+	hand: z.array(handMove),
+	handMode: z.enum(['add', 'replace']),
 	parentValues: z
 		.record(id, finite)
 		.describe('the parent’s results of constrained objectives, which an absolute bound is measured against')
@@ -320,16 +484,24 @@ export const prediction = z.object({
 export type Prediction = z.infer<typeof prediction>;
 
 export const constraintAnswer = z.object({
-	kind: z.enum(['volume', 'objective']),
+	kind: z.enum(['volume', 'objective', 'displacement', 'keepOut', 'thickness']),
 	objectiveId: id.optional(),
+	keepOutId: id.optional(),
+	name: z.string().optional().describe('of the keep-out'),
+	patches: z.array(z.string()).optional(),
+	index: z.int().describe('of the constraint in the recipe'),
 	bound,
 	unit: z.string(),
+	limit: finite.nullable().describe('the bound itself, in `unit`'),
 	before: finite.nullable(),
 	after: finite.nullable(),
-	active: z.boolean(),
+	kept: z.boolean(),
+	active: z.boolean().describe('whether it binds'),
 	price: finite
 		.nullable()
-		.describe('gain in the weighted objective for relaxing by one unit at the same length of the move; null when free')
+		.describe('gain in the weighted objective for relaxing by one unit at the same length of the move; null when free'),
+	places: z.int().optional().describe('vertices at which it binds'),
+	place: vec3.nullable().optional().describe('m, where `after` is found')
 });
 export type ConstraintAnswer = z.infer<typeof constraintAnswer>;
 
@@ -358,9 +530,17 @@ export const moveAnswer = z.object({
 	lattices: z.array(
 		z.object({
 			boxId: id,
+			mirrored: z.boolean().describe('of the box’s mirror image, which symmetry added'),
 			displacement: z.array(finite).describe('m; x, y, z of each control point, u slowest, w fastest')
 		})
 	),
+	field: z
+		.object({
+			vertices: z.string().describe('base64 of uint32 ids, ascending'),
+			displacement: z.string().describe('base64 of float32 x, y, z of each, m')
+		})
+		.nullable()
+		.describe('the displacement itself, where no lattice gives it (mode "surface"); else null'),
 	caution: z.string()
 });
 export type MoveAnswer = z.infer<typeof moveAnswer>;
@@ -440,7 +620,7 @@ export const problem = z.object({
 });
 export type Problem = z.infer<typeof problem>;
 
-export const jobKind = z.enum(['import-shape', 'import-map', 'move']);
+export const jobKind = z.enum(['import-shape', 'import-map', 'import-keep-out', 'move']);
 export const jobState = z.enum(['queued', 'running', 'done', 'failed', 'cancelled']);
 export const jobAccepted = z.object({ jobId: id });
 export const job = z.object({

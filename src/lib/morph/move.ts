@@ -393,10 +393,11 @@ class Move implements PreparedMove {
 		constraints: MoveConstraint[] = []
 	): HandMove {
 		checkObjectives(objectives, this.surface);
-		const displacement = this.byHand(lattices).field;
+		const byHand = this.byHand(lattices);
+		const displacement = byHand.field;
 		const linear = this.linearParts(constraints, objectives);
 		const sets = this.placeSets(constraints, displacementNorms(displacement).max);
-		return this.outcome(displacement, objectives, linear, sets, null);
+		return { ...this.outcome(displacement, objectives, linear, sets, null), lattices: byHand.lattices };
 	}
 }
 

@@ -8,6 +8,8 @@ export interface StoreOptions {
 	triangles: Uint32Array;
 	/** m^3 that the stored surface must enclose: give it where the volume is an equality. */
 	targetVolume?: number;
+	/** What the volume is summed about, metres: the surface's origin; default near the surface. */
+	origin?: readonly [number, number, number];
 }
 
 /** Where nudging stops: far below the promise of 1e-9, above the roundoff of the sum itself. */
@@ -77,7 +79,7 @@ export function storePositions(
 		}
 	}
 	const metres = toMetres(positions, metresPerUnit);
-	const origin = boundsCentre(metres);
+	const origin = options.origin ?? boundsCentre(metres);
 	let volume = volumeOf(metres, triangles, origin);
 	let nudges = 0;
 	if (targetVolume === undefined) return { positions, volume, nudges, volumeError: 0 };

@@ -328,16 +328,7 @@ export interface MoveSolution {
 }
 
 /** What a hand-made lattice displacement does: same map to the surface, same prediction. */
-export interface HandMove {
-	moved: Uint32Array;
-	displacement: Float64Array;
-	predicted: { objectiveId: string; change: number }[];
-	maxDisplacement: number;
-	rmsDisplacement: number;
-	volumeBefore: number;
-	volumeAfter: number;
-	constraints: ConstraintReport[];
-}
+export type HandMove = Omit<MoveSolution, 'metricLength' | 'stepFactor'>;
 
 /** Keeps the embedding, the moments and the factor of a surface with its boxes. */
 export interface PreparedMove {

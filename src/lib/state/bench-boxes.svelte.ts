@@ -15,7 +15,7 @@ const HISTORY = 200;
 
 /** What of a box people edit. */
 export function bodyOf(box: Box): BoxCreate {
-	const { name, centre, halfSize, rotation, lattice, basis, degree, held, axes, frame } = box;
+	const { name, centre, halfSize, rotation, lattice, basis, degree, held, heldPoints, axes, frame } = box;
 	return {
 		name,
 		centre: [...centre],
@@ -25,6 +25,7 @@ export function bodyOf(box: Box): BoxCreate {
 		basis,
 		...(degree === undefined ? {} : { degree }),
 		held: { ...held },
+		heldPoints: [...heldPoints],
 		axes: [...axes],
 		frame
 	};

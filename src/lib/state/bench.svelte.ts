@@ -253,6 +253,7 @@ export class BenchState {
 			lattice: [6, 5, 5],
 			basis: 'bernstein',
 			held: { u0: 0, u1: 0, v0: 0, v1: 0, w0: 0, w1: 0 },
+			heldPoints: [],
 			axes: ['x', 'y', 'z'],
 			frame: 'box'
 		};

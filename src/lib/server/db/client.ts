@@ -2,6 +2,7 @@
 import { Sequelize } from 'sequelize';
 import { initAuth } from './models/auth';
 import { initContent } from './models/content';
+import { initDrawn } from './models/drawn';
 import { initPeople } from './models/people';
 import { initShapes } from './models/shapes';
 import { initStudies } from './models/studies';
@@ -27,6 +28,7 @@ export function connect(url: string, { connections = 10 }: DatabaseOptions = {})
 	initPeople(sequelize);
 	initAuth(sequelize);
 	initStudies(sequelize);
+	initDrawn(sequelize);
 	initContent(sequelize);
 	initShapes(sequelize);
 	return sequelize;

@@ -7,7 +7,7 @@ import { recordEvent } from '../repositories/audit';
 import { LOADED, lookForStudies, makeInvented, removeStudy } from '../repositories/demo';
 import { findShape } from '../repositories/shapes';
 import { inTransaction } from '../repositories/transaction';
-import { createBox } from '../services/boxes';
+import { boxService } from '../services/boxes';
 import { waitForJob } from '../services/jobs';
 import { checkMapImport, importMap } from '../services/maps';
 import { putMember } from '../services/members';
@@ -89,7 +89,7 @@ class Walk {
 			this.#objectiveIds[key] = (await createObjective(this.access, objectiveCreate.parse(create))).id;
 		}
 		for (const { key, create } of demoPlan.boxes) {
-			this.#boxIds[key] = (await createBox(this.access, boxCreate.parse(create))).id;
+			this.#boxIds[key] = (await boxService.create(this.access, boxCreate.parse(create))).id;
 		}
 		await this.#baseline();
 		for (let number = 0; number <= demoPlan.moves.length; number++) {

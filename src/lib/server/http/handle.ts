@@ -44,6 +44,8 @@ const WORD: Record<Subject, string> = {
 	topology: 'mesh',
 	map: 'map',
 	box: 'design box',
+	keepOut: 'keep-out',
+	lock: 'lock',
 	objective: 'objective',
 	job: 'job',
 	user: 'person',

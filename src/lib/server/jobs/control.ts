@@ -10,6 +10,7 @@ export const STAGES = [
 	'Reading the map',
 	'Matching the map to the surface',
 	'Storing the map',
+	'Storing the keep-out',
 	'Preparing the move',
 	'Solving for the move',
 	'Checking the moved surface',

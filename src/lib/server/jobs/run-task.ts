@@ -5,6 +5,7 @@ import { type MeshCache } from '../services/mesh-cache';
 import { Control, Stopped } from './control';
 import type { ThreadOutcome, ThreadTask } from './protocol';
 import { fileTask } from './tasks/file';
+import { importKeepOutTask } from './tasks/import-keep-out';
 import { importMapTask } from './tasks/import-map';
 import { importShapeTask } from './tasks/import-shape';
 import { NotOurs, type JobTask } from './tasks/job-task';
@@ -17,6 +18,7 @@ export const PREVIEW_CACHE_BYTES = 800_000_000;
 const JOBS: Record<ClaimedJob['kind'], (task: JobTask) => Promise<void>> = {
 	'import-shape': importShapeTask,
 	'import-map': importMapTask,
+	'import-keep-out': importKeepOutTask,
 	move: commitTask
 };
 

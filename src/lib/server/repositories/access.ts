@@ -13,6 +13,8 @@ const OWNING_STUDY: Record<StudySubject, string> = {
 	topology: 'SELECT study_id FROM topologies WHERE id = $1',
 	map: 'SELECT shapes.study_id FROM maps JOIN shapes ON shapes.id = maps.shape_id WHERE maps.id = $1',
 	box: 'SELECT study_id FROM design_boxes WHERE id = $1',
+	keepOut: 'SELECT study_id FROM keep_outs WHERE id = $1',
+	lock: 'SELECT study_id FROM locks WHERE id = $1',
 	objective: 'SELECT study_id FROM objectives WHERE id = $1',
 	job: 'SELECT study_id FROM jobs WHERE id = $1'
 };

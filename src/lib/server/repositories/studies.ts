@@ -1,6 +1,6 @@
 /** Queries about studies, their people, objectives and operating points. */
 import { QueryTypes } from 'sequelize';
-import type { LengthUnit, Role, Sense } from '$lib/api/schemas';
+import type { LengthUnit, Plane, Role, Sense } from '$lib/api/schemas';
 import { database } from '../db/client';
 import { UserModel } from '../db/models/people';
 import { ObjectiveModel, OperatingPointModel, StudyMemberModel, StudyModel } from '../db/models/studies';
@@ -20,6 +20,7 @@ export interface StudySummaryRow {
 	referenceArea: number | null;
 	density: number | null;
 	speed: number | null;
+	symmetry: Plane | null;
 	invented: boolean;
 	role: Role;
 	shapeCount: number;
@@ -29,7 +30,7 @@ export interface StudySummaryRow {
 
 const SUMMARY = `
 	SELECT s.id, s.name, s.note, s.length_unit AS "lengthUnit", s.reference_area AS "referenceArea", s.density, s.speed,
-		s.invented, m.role, s.created_at AS "createdAt", s.updated_at AS "updatedAt",
+		s.symmetry, s.invented, m.role, s.created_at AS "createdAt", s.updated_at AS "updatedAt",
 		(SELECT count(*)::int FROM shapes WHERE shapes.study_id = s.id) AS "shapeCount"
 	FROM studies s JOIN study_members m ON m.study_id = s.id AND m.user_id = $1`;
 
@@ -51,6 +52,12 @@ export async function findStudySummary(userId: string, id: string, tx?: Tx): Pro
 	});
 	return rows[0] ?? null;
 }
+
+/** The study's own row. */
+export const findStudyRow = (id: string, tx?: Tx): Promise<StudyRow | null> => {
+	database();
+	return StudyModel.findByPk(id, { transaction: tx });
+};
 
 export const lockStudyIfAny = (id: string, tx: Tx): Promise<StudyRow | null> => {
 	database();

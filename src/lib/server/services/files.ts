@@ -6,6 +6,7 @@ import { Control } from '../jobs/control';
 import type { FileRequest } from '../jobs/protocol';
 import { jobsRuntime } from '../jobs/runtime';
 import { findMap, findRootFilename, findTopology } from '../repositories/shapes';
+import { keepOutContents } from './keep-outs';
 import { requireShape } from './shapes';
 
 export interface FileAnswer {
@@ -38,6 +39,28 @@ export async function trianglesFile(topologyId: string): Promise<FileAnswer> {
 	const topology = await findTopology(topologyId);
 	if (!topology) throw new AppError('not-found', 'There is no such mesh.');
 	return stored(await contentInfo(topology.trianglesId), { type: BYTES });
+}
+
+/**
+ * The surface of an uploaded keep-out: uint32 numbers of vertices and of triangles, float32 x, y, z of each vertex in the
+ * study's length unit, uint32 corners; little-endian.
+ *
+ * @throws AppError not-found
+ */
+export async function keepOutMeshFile(keepOutId: string): Promise<FileAnswer> {
+	const { positionsId, trianglesId } = await keepOutContents(keepOutId);
+	const [positions, triangles] = await Promise.all([contentInfo(positionsId), contentInfo(trianglesId)]);
+	const head = new Uint8Array(new Uint32Array([positions.size / 12, triangles.size / 12]).buffer);
+	return {
+		etag: `"keep-out-${keepOutId}"`,
+		size: head.length + positions.size + triangles.size,
+		type: BYTES,
+		async *bytes() {
+			yield head;
+			yield* readContent(positionsId);
+			yield* readContent(trianglesId);
+		}
+	};
 }
 
 /** @throws AppError not-found when the shape was not uploaded but made by a move */

@@ -8,12 +8,14 @@ import {
 	type DesignBox,
 	type Mesh,
 	type PreparedMove,
-	type Surface
+	type Surface,
+	type SymmetryPlane
 } from '$lib/morph';
 import type { Recipe } from '$lib/api/schemas';
 import { readWhole } from '../content/store';
 import { AppError } from '../errors';
 import { findMaps, findStudy, type MapRow, type ShapeRow } from '../repositories/shapes';
+import { weightsOf } from './lock-weights';
 import { METRES } from './recipe';
 
 /** Keeps the values that were used last, as long as their bytes fit. A value is not kept when the making of it fails. */
@@ -68,6 +70,7 @@ export async function metresPerUnit(studyId: string): Promise<number> {
 
 /** A shape ready to be moved. Borrowed from the cache: not to be changed. */
 export interface LoadedShape {
+	id: string;
 	mesh: Mesh;
 	surface: Surface;
 	metresPerUnit: number;
@@ -83,15 +86,26 @@ export class MeshCache {
 		this.#kept = new Kept(limit);
 	}
 
-	/** @param shape with its topology */
-	shape(shape: ShapeRow, checkpoint?: Checkpoint): Promise<LoadedShape> {
+	/** Anything else that is worth keeping. @param bytes about */
+	kept<T>(key: string, make: () => Promise<T> | T, bytes: number): Promise<T> {
+		return this.#kept.get(key, make, () => bytes);
+	}
+
+	/**
+	 * @param shape with its topology
+	 * @param symmetry of a half model, which then counts as closed by its plane
+	 */
+	shape(shape: ShapeRow, symmetry: SymmetryPlane | null, checkpoint?: Checkpoint): Promise<LoadedShape> {
 		const make = async () => {
 			const [mesh, metres] = await Promise.all([readMesh(shape), metresPerUnit(shape.studyId)]);
 			checkpoint?.(0.5);
-			const surface = makeSurface(toMetres(mesh.positions, metres), mesh.triangles, { checkpoint });
-			return { mesh, surface, metresPerUnit: metres };
+			const options = { checkpoint, symmetry: symmetry ?? undefined };
+			const surface = makeSurface(toMetres(mesh.positions, metres), mesh.triangles, options);
+			return { id: shape.id, mesh, surface, metresPerUnit: metres };
 		};
-		return this.#kept.get(`shape ${shape.id}`, make, (loaded) => surfaceBytes(loaded.surface));
+		return this.#kept.get(`shape ${shape.id} ${JSON.stringify(symmetry)}`, make, (loaded) =>
+			surfaceBytes(loaded.surface)
+		);
 	}
 
 	/**
@@ -127,18 +141,27 @@ export class MeshCache {
 	}
 
 	/** The boxes' part of a move: all that a change of step, weights or constraints leaves as it is. */
-	prepared(shapeId: string, recipe: Recipe, surface: Surface, checkpoint?: Checkpoint): Promise<PreparedMove> {
+	prepared(parent: LoadedShape, recipe: Recipe, checkpoint?: Checkpoint): Promise<PreparedMove> {
 		const boxes = recipe.boxes.map(designBox);
-		const key = `move ${shapeId} ${recipe.smoothing} ${JSON.stringify(boxes)}`;
-		const make = () => prepareMove(surface, boxes, { smoothing: recipe.smoothing, checkpoint });
-		const bytesOf = ({ moved, unknowns }: PreparedMove) => 200 * moved.length + 8 * unknowns * unknowns;
+		const { mode, smoothing, symmetry, locks } = recipe;
+		const key = `move ${parent.id} ${JSON.stringify([mode, smoothing, symmetry, boxes, locks])}`;
+		const make = () =>
+			prepareMove(parent.surface, boxes, {
+				mode,
+				smoothing,
+				symmetry: symmetry ?? undefined,
+				weights: weightsOf(locks, parent.mesh.patches, parent.surface),
+				checkpoint
+			});
+		const bytesOf = ({ moved, unknowns }: PreparedMove) =>
+			mode === 'surface' ? 300 * moved.length : 200 * moved.length + 8 * unknowns * unknowns;
 		return this.#kept.get(key, make, bytesOf);
 	}
 }
 
-function designBox(box: Recipe['boxes'][number]): DesignBox {
-	const { id, name, centre, halfSize, rotation, lattice, basis, degree, held, axes, frame } = box;
-	return { id, name, centre, halfSize, rotation, lattice, basis, degree, held, axes, frame };
+export function designBox(box: Recipe['boxes'][number]): DesignBox {
+	const { id, name, centre, halfSize, rotation, lattice, basis, degree, held, heldPoints, axes, frame } = box;
+	return { id, name, centre, halfSize, rotation, lattice, basis, degree, held, heldPoints, axes, frame };
 }
 
 /** A stored map as nodal gradient, N x 3 per metre. */

@@ -5,7 +5,8 @@ import {
 	storePositions,
 	type CheckResult,
 	type MoveChecks,
-	type MoveConstraint,
+	type ConstraintReport,
+	type DesignBox,
 	type MoveObjective,
 	type MoveSolution,
 	type StoredPositions
@@ -14,6 +15,7 @@ import type { Check, ConstraintAnswer, ConstraintRequest, MoveAnswer, Recipe } f
 import { AppError } from '../errors';
 import type { Control } from '../jobs/control';
 import { findShape, type ShapeRow } from '../repositories/shapes';
+import { engineConstraints } from './engine-input';
 import { MeshCache, type LoadedShape } from './mesh-cache';
 import { ENGINE_VERSION, type CompleteRecipe } from './recipe';
 
@@ -23,7 +25,12 @@ export const CAUTION =
 
 export interface Moved {
 	parent: LoadedShape;
-	solution: MoveSolution;
+	/** By hand alone there is no descent, and so no metric length. */
+	solution: Omit<MoveSolution, 'metricLength' | 'stepFactor'>;
+	/** Which of the recipe's constraints each of the engine's is. */
+	indices: number[];
+	/** Given boxes; the engine's further ones are mirror images. */
+	boxes: readonly DesignBox[];
 	/** m^3 that the stored surface must enclose, where a volume constraint binds. */
 	targetVolume: number | undefined;
 }
@@ -39,36 +46,44 @@ export async function solveMove(
 	control: Pick<Control, 'stage'>
 ): Promise<Moved> {
 	refuseUnsupported(recipe);
-	const parent = await cache.shape(shape, control.stage('Reading the surface', 0, 0.25));
+	const parent = await cache.shape(shape, recipe.symmetry, control.stage('Reading the surface', 0, 0.2));
 	const gradients = await cache.gradients(recipe, parent.surface);
-	const prepared = await cache.prepared(
-		shape.id,
-		recipe,
-		parent.surface,
-		control.stage('Preparing the move', 0.25, 0.6)
-	);
+	const prepared = await cache.prepared(parent, recipe, control.stage('Preparing the move', 0.2, 0.5));
 	const objectives: MoveObjective[] = [];
 	for (const [id, gradient] of gradients) {
 		objectives.push({ id, gradient, sense: recipe.senses[id], weight: recipe.weights[id] });
 	}
-	const solution = prepared.solve({
-		objectives,
-		step: recipe.step,
-		constraints: recipe.constraints.map((constraint) => engineConstraint(constraint, recipe.parentValues)),
-		checkpoint: control.stage('Solving for the move', 0.6, 0.8)
+	const constraints = await engineConstraints(recipe, parent, cache);
+	const hand = recipe.boxes.map(({ id }) => {
+		const made = recipe.hand.find(({ boxId }) => boxId === id);
+		return made ? Float64Array.from(made.displacement) : null;
 	});
-	const volume = solution.constraints.find((constraint) => constraint.kind === 'volume' && constraint.active);
-	return { parent, solution, targetVolume: volume?.limit };
+	const asked = constraints.map(({ constraint }) => constraint);
+	const solution =
+		recipe.handMode === 'replace'
+			? prepared.applyByHand(hand, objectives, asked)
+			: prepared.solve({
+					objectives,
+					step: recipe.step,
+					constraints: asked,
+					hand: hand.some((made) => made) ? hand : undefined,
+					checkpoint: control.stage('Solving for the move', 0.5, 0.8)
+				});
+	const volume = solution.constraints.find(({ index, kind, active }) => {
+		const { constraint } = constraints[index];
+		return kind === 'volume' && active && !(constraint.kind === 'volume' && constraint.part);
+	});
+	return {
+		parent,
+		solution,
+		indices: constraints.map(({ index }) => index),
+		boxes: prepared.boxes,
+		targetVolume: volume?.limit
+	};
 }
 
-/** What the engine does not do yet, refused before anything is read. */
+/** What the engine does not do, refused before anything is read. */
 function refuseUnsupported(recipe: Recipe): void {
-	if (recipe.mode !== 'lattice') {
-		throw new AppError('unsupported', 'Moves without a lattice (mode "surface") are not available yet.', {
-			errors: [{ pointer: '/mode', detail: 'only "lattice" is available' }],
-			mend: 'Use the mode "lattice".'
-		});
-	}
 	if (recipe.engine !== ENGINE_VERSION) {
 		throw new AppError(
 			'unsupported',
@@ -78,20 +93,37 @@ function refuseUnsupported(recipe: Recipe): void {
 			}
 		);
 	}
+	const missing = recipe.constraints.findIndex(MISSING);
+	if (missing >= 0) {
+		const detail = 'Moves that keep a thickness, a radius or the volume of a part are not available yet.';
+		throw new AppError('unsupported', detail, {
+			errors: [{ pointer: `/constraints/${missing}`, detail }],
+			mend: 'Leave the constraint out.'
+		});
+	}
+	const place = recipe.constraints.findIndex(({ kind }) => PLACE_KINDS.includes(kind));
+	if (recipe.mode === 'surface' && place >= 0) {
+		const detail = 'In surface mode a move keeps volumes and objectives; bounds at places need a lattice.';
+		throw new AppError('unsupported', detail, {
+			errors: [{ pointer: `/constraints/${place}`, detail }],
+			mend: 'Use the mode "lattice", or leave the constraint out.'
+		});
+	}
 }
 
-/** An absolute bound on an objective becomes one on its change. */
-function engineConstraint(constraint: ConstraintRequest, parentValues: Record<string, number>): MoveConstraint {
-	if (constraint.kind === 'volume' || constraint.value === undefined) return constraint;
-	return { ...constraint, value: constraint.value - parentValues[constraint.objectiveId] };
-}
+/** Constraints that the engine has no kernel for yet. */
+const MISSING = ({ kind, ...constraint }: ConstraintRequest) =>
+	kind === 'thickness' || kind === 'radius' || (kind === 'volume' && 'patches' in constraint);
+
+const PLACE_KINDS: ConstraintRequest['kind'][] = ['displacement', 'keepOut', 'thickness'];
 
 /** Rounds the moved surface to what is stored. */
 export function storedPositions({ parent, solution, targetVolume }: Moved): StoredPositions {
 	return storePositions(parent.mesh.positions, solution.moved, solution.displacement, {
 		metresPerUnit: parent.metresPerUnit,
 		triangles: parent.mesh.triangles,
-		targetVolume
+		targetVolume,
+		origin: parent.surface.origin
 	});
 }
 
@@ -124,11 +156,9 @@ const checkAnswer = (result: CheckResult, unit: string): Check => ({
 });
 
 /** What is said about a move, in the study's words and order. */
-export function moveAnswer(
-	{ recipe, objectives }: CompleteRecipe,
-	{ parent, solution }: Moved,
-	checks: MoveChecks
-): MoveAnswer {
+export function moveAnswer(complete: CompleteRecipe, moved: Moved, checks: MoveChecks): MoveAnswer {
+	const { recipe, objectives } = complete;
+	const { parent, solution, indices, boxes } = moved;
 	const changes = new Map(solution.predicted.map(({ objectiveId, change }) => [objectiveId, change]));
 	const closed = parent.surface.watertight;
 	return {
@@ -139,24 +169,45 @@ export function moveAnswer(
 		insideVertices: solution.moved.length,
 		volumeBefore: closed ? solution.volumeBefore : null,
 		volumeAfter: closed ? solution.volumeAfter : null,
-		constraints: solution.constraints.map((report): ConstraintAnswer => {
-			const { kind, objectiveId, bound, active } = report;
-			if (kind !== 'volume' && kind !== 'objective') throw new Error(`no answer for constraints of kind ${kind}`);
-			const price = active ? report.price : null;
-			if (kind === 'volume') {
-				return { kind, bound, unit: 'm³', before: report.before, after: report.after, active, price };
-			}
-			const unit = objectives.find(({ id }) => id === objectiveId)?.unit ?? '';
-			const before = recipe.parentValues[objectiveId!] ?? null;
-			const after = before === null || report.after === null ? null : before + report.after;
-			return { kind, objectiveId, bound, unit, before, after, active, price };
-		}),
+		constraints: solution.constraints.map((report) => constraintAnswer(report, indices, complete)),
 		checks: Object.fromEntries(
 			Object.entries(checks).map(([name, result]) => [name, checkAnswer(result, CHECK_UNITS[name as keyof MoveChecks])])
 		),
-		lattices: recipe.boxes.map((box, i) => ({ boxId: box.id, displacement: Array.from(solution.lattices[i]) })),
+		lattices: solution.lattices.map((lattice, i) => ({
+			boxId: boxes[i].id,
+			mirrored: i >= recipe.boxes.length,
+			displacement: Array.from(lattice)
+		})),
+		field: recipe.mode === 'surface' || recipe.locks.length > 0 ? fieldAnswer(solution) : null,
 		caution: CAUTION
 	};
+}
+
+function constraintAnswer(
+	{ index, kind, objectiveId, bound, limit, before, after, kept, active, places, place, price }: ConstraintReport,
+	indices: number[],
+	{ recipe, objectives }: CompleteRecipe
+): ConstraintAnswer {
+	const request = recipe.constraints[indices[index]];
+	const common = { kind, index: indices[index], bound, kept, active, price: active ? price : null };
+	const patches = 'patches' in request && request.patches ? { patches: request.patches } : {};
+	if (kind === 'volume') return { ...common, ...patches, unit: 'm³', limit, before, after };
+	if (kind === 'objective') {
+		// The engine knows changes; people, values, where the parent has one.
+		const unit = objectives.find(({ id }) => id === objectiveId)?.unit ?? '';
+		const start = recipe.parentValues[objectiveId!] ?? null;
+		const value = (change: number | null) => (start === null || change === null ? null : start + change);
+		return { ...common, objectiveId, unit, limit: value(limit), before: start, after: value(after) };
+	}
+	const keepOut = request.kind === 'keepOut' && recipe.keepOuts.find(({ id }) => id === request.keepOutId);
+	const named = keepOut ? { keepOutId: keepOut.id, name: keepOut.name } : {};
+	return { ...common, ...patches, ...named, unit: 'm', limit, before, after, places, place };
+}
+
+function fieldAnswer({ moved, displacement }: Moved['solution']): MoveAnswer['field'] {
+	const base64 = (array: ArrayBufferView) =>
+		Buffer.from(array.buffer, array.byteOffset, array.byteLength).toString('base64');
+	return { vertices: base64(moved), displacement: base64(Float32Array.from(displacement)) };
 }
 
 /**

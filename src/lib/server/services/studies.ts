@@ -4,10 +4,12 @@ import type * as wire from '$lib/api/schemas';
 import type { Caller, StudyAccess } from '../auth/caller';
 import { AppError } from '../errors';
 import { recordEvent } from '../repositories/audit';
-import { listBoxes } from '../repositories/boxes';
+import { boxes, keepOuts, locks } from '../repositories/drawn';
 import * as repository from '../repositories/studies';
 import { inTransaction, type Tx } from '../repositories/transaction';
 import { boxAnswer } from './boxes';
+import { keepOutAnswer } from './keep-outs';
+import { lockAnswer } from './locks';
 
 const FIRST_OPERATING_POINT = 'Design point';
 
@@ -38,7 +40,7 @@ function operatingPointAnswer(row: repository.OperatingPointRow): wire.Operating
 async function readStudy({ studyId, userId }: StudyAccess, tx?: Tx): Promise<wire.Study> {
 	const row = await repository.findStudySummary(userId, studyId, tx);
 	if (!row) throw new AppError('not-found', 'There is no such study, or you have no part in it.');
-	const { referenceArea, density, speed } = row;
+	const { referenceArea, density, speed, symmetry } = row;
 	return {
 		...summaryAnswer(row),
 		referenceArea,
@@ -46,7 +48,10 @@ async function readStudy({ studyId, userId }: StudyAccess, tx?: Tx): Promise<wir
 		speed,
 		objectives: (await repository.listObjectives(studyId, tx)).map(objectiveAnswer),
 		operatingPoints: (await repository.listOperatingPoints(studyId, tx)).map(operatingPointAnswer),
-		boxes: (await listBoxes(studyId, tx)).map(boxAnswer)
+		symmetry,
+		boxes: (await boxes.list(studyId, tx)).map(boxAnswer),
+		keepOuts: (await keepOuts.list(studyId, tx)).map(keepOutAnswer),
+		locks: (await locks.list(studyId, tx)).map(lockAnswer)
 	};
 }
 

@@ -74,7 +74,7 @@ export class MoveModel extends Model<InferAttributes<MoveModel>, InferCreationAt
 	declare shapeId: string;
 	declare recipe: Recipe;
 	/** What the preview answers, without the lattices, which are a content. */
-	declare answer: Omit<MoveAnswer, 'lattices'>;
+	declare answer: Omit<MoveAnswer, 'lattices' | 'field'>;
 	declare latticesId: string;
 	declare createdBy: string | null;
 	declare createdAt: CreationOptional<Date>;

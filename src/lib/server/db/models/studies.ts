@@ -6,8 +6,8 @@ import {
 	type InferCreationAttributes,
 	type Sequelize
 } from 'sequelize';
-import type { BoxCreate, LengthUnit, Role, Sense } from '$lib/api/schemas';
-import { primaryId, reference, createdAt, text, number, count, json, flag, withTimes } from './columns';
+import type { LengthUnit, Plane, Rehearsal, Role, Sense } from '$lib/api/schemas';
+import { primaryId, reference, createdAt, text, number, count, flag, withTimes } from './columns';
 import { UserModel } from './people';
 
 export class StudyModel extends Model<InferAttributes<StudyModel>, InferCreationAttributes<StudyModel>> {
@@ -18,6 +18,7 @@ export class StudyModel extends Model<InferAttributes<StudyModel>, InferCreation
 	declare referenceArea: CreationOptional<number | null>;
 	declare density: CreationOptional<number | null>;
 	declare speed: CreationOptional<number | null>;
+	declare symmetry: CreationOptional<Plane | null>;
 	declare invented: CreationOptional<boolean>;
 	declare nextShapeNumber: CreationOptional<number>;
 	declare createdBy: string | null;
@@ -44,6 +45,7 @@ export class ObjectiveModel extends Model<InferAttributes<ObjectiveModel>, Infer
 	declare unit: string;
 	declare sense: Sense;
 	declare weight: number;
+	declare rehearsal: CreationOptional<Rehearsal | null>;
 	declare createdAt: CreationOptional<Date>;
 	declare updatedAt: CreationOptional<Date>;
 }
@@ -63,25 +65,6 @@ export class OperatingPointModel extends Model<
 	declare createdAt: CreationOptional<Date>;
 }
 
-export class DesignBoxModel extends Model<InferAttributes<DesignBoxModel>, InferCreationAttributes<DesignBoxModel>> {
-	declare id: CreationOptional<string>;
-	declare studyId: string;
-	declare archivedAt: CreationOptional<Date | null>;
-	declare createdAt: CreationOptional<Date>;
-	declare versions?: DesignBoxVersionModel[];
-}
-
-export class DesignBoxVersionModel extends Model<
-	InferAttributes<DesignBoxVersionModel>,
-	InferCreationAttributes<DesignBoxVersionModel>
-> {
-	declare boxId: string;
-	declare version: number;
-	declare definition: BoxCreate;
-	declare createdBy: string | null;
-	declare createdAt: CreationOptional<Date>;
-}
-
 export function initStudies(sequelize: Sequelize) {
 	StudyModel.init(
 		{
@@ -92,6 +75,7 @@ export function initStudies(sequelize: Sequelize) {
 			referenceArea: DataTypes.DOUBLE,
 			density: DataTypes.DOUBLE,
 			speed: DataTypes.DOUBLE,
+			symmetry: DataTypes.JSONB,
 			invented: flag(false),
 			nextShapeNumber: { type: DataTypes.INTEGER, allowNull: false, defaultValue: 0 },
 			createdBy: DataTypes.UUID,
@@ -118,6 +102,7 @@ export function initStudies(sequelize: Sequelize) {
 			unit: text(),
 			sense: text(),
 			weight: number(),
+			rehearsal: DataTypes.JSONB,
 			createdAt: DataTypes.DATE,
 			updatedAt: DataTypes.DATE
 		},
@@ -137,21 +122,6 @@ export function initStudies(sequelize: Sequelize) {
 		},
 		{ sequelize, tableName: 'operating_points' }
 	);
-	DesignBoxModel.init(
-		{ id: primaryId(), studyId: reference(), archivedAt: DataTypes.DATE, createdAt: createdAt() },
-		{ sequelize, tableName: 'design_boxes' }
-	);
-	DesignBoxVersionModel.init(
-		{
-			boxId: { ...reference(), primaryKey: true },
-			version: { type: DataTypes.INTEGER, allowNull: false, primaryKey: true },
-			definition: json(),
-			createdBy: DataTypes.UUID,
-			createdAt: createdAt()
-		},
-		{ sequelize, tableName: 'design_box_versions' }
-	);
 	StudyMemberModel.belongsTo(UserModel, { as: 'user', foreignKey: 'userId' });
 	StudyMemberModel.belongsTo(StudyModel, { as: 'study', foreignKey: 'studyId' });
-	DesignBoxModel.hasMany(DesignBoxVersionModel, { as: 'versions', foreignKey: 'boxId' });
 }

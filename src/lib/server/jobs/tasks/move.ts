@@ -1,6 +1,6 @@
 /** Previews a move, or commits it as a new shape. */
 import { randomUUID } from 'node:crypto';
-import { surfaceMeasures, toMetres, type MoveSolution } from '$lib/morph';
+import { surfaceMeasures, toMetres } from '$lib/morph';
 import type { Check, MoveAnswer, MoveCommitted, Recipe, RecipeRequest } from '$lib/api/schemas';
 import { POSITION_CHUNK_BYTES, putContent } from '../../content/store';
 import { AppError } from '../../errors';
@@ -58,7 +58,7 @@ export async function commitTask(task: JobTask): Promise<void> {
 		async (tx) => {
 			const stored = await putContent(positions, tx, { chunkBytes: POSITION_CHUNK_BYTES });
 			progress(0.8);
-			const lattices = await putContent(together(moved.solution), tx);
+			const lattices = await putContent(together(moved.solution.lattices), tx);
 			return { positionsId: stored.id, latticesId: lattices.id };
 		},
 		async (tx, { positionsId, latticesId }): Promise<MoveCommitted> => {
@@ -82,7 +82,8 @@ export async function commitTask(task: JobTask): Promise<void> {
 				},
 				tx
 			);
-			const { lattices: _inContent, ...kept } = answer;
+			// Large, and made again from the recipe when asked for.
+			const { lattices: _lattices, field: _field, ...kept } = answer;
 			const row = { id: moveId, studyId: job.studyId, parentShapeId: parentId, shapeId, recipe, answer: kept };
 			await insertMove({ ...row, latticesId, createdBy: job.createdBy }, tx);
 			await recordEvent(tx, actorOf(job), {
@@ -97,7 +98,7 @@ export async function commitTask(task: JobTask): Promise<void> {
 }
 
 /** All boxes' control point displacements, one after the other. */
-function together({ lattices }: MoveSolution): Float64Array {
+function together(lattices: Float64Array[]): Float64Array {
 	const whole = new Float64Array(lattices.reduce((sum, lattice) => sum + lattice.length, 0));
 	let at = 0;
 	for (const lattice of lattices) {

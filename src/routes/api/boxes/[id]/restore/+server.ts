@@ -1,5 +1,5 @@
 import { operations } from '$lib/api/contract';
 import { handle } from '$lib/server/http/handle';
-import { restoreBox } from '$lib/server/services/boxes';
+import { boxService } from '$lib/server/services/boxes';
 
-export const POST = handle(operations.restoreBox, ({ access, params }) => restoreBox(access, params.id));
+export const POST = handle(operations.restoreBox, ({ access, params }) => boxService.restore(access, params.id));
