@@ -158,6 +158,21 @@ export class Scene {
 		});
 	}
 
+	/** Uploads a closed surface as keep-out. @returns its id */
+	async importKeepOut(
+		file: Uint8Array<ArrayBuffer>,
+		filename: string,
+		query: Record<string, string> = {}
+	): Promise<string> {
+		const path = `/api/studies/${this.study.id}/keep-outs/mesh?${new URLSearchParams({ filename, ...query })}`;
+		return resultOf<{ keepOutId: string }>(await upload(this.server, this.token, path, file)).keepOutId;
+	}
+
+	/** Draws a keep-out or a lock. */
+	draw<T = { id: string }>(what: 'keep-outs' | 'locks', body: object): Promise<T> {
+		return ok<T>(this.server, this.token, 'POST', `/api/studies/${this.study.id}/${what}`, body);
+	}
+
 	preview(shapeId: string, recipe: RecipeInput): Promise<MoveAnswer> {
 		return ok<MoveAnswer>(this.server, this.token, 'POST', `/api/shapes/${shapeId}/moves/preview`, recipe, 200);
 	}

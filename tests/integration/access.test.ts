@@ -23,6 +23,7 @@ let server: TestServer;
 let scene: Scene;
 let shape: Shape;
 let mapId: string;
+let keepOutMesh: string;
 let moveRecipe: object;
 const tokens = {} as Record<Kind, string | undefined>;
 const mesh = ellipsoid(1, [2.4, 0.9, 0.7]);
@@ -36,7 +37,8 @@ beforeAll(async () => {
 	shape = await scene.importShape(stl);
 	({ mapId } = await scene.importMap(shape.id, csv));
 	shape = await scene.shape(shape.id);
-	moveRecipe = { boxIds: [await newBox()], step: 0.01 };
+	moveRecipe = { boxIds: [await newBox()], step: 0.01, lockIds: [] };
+	keepOutMesh = await scene.importKeepOut(stl, 'rail.stl');
 	tokens.engineer = scene.token;
 	tokens.viewer = (await scene.member('viewer')).token;
 	tokens.reviewer = (await scene.member('reviewer')).token;
@@ -48,6 +50,19 @@ afterAll(() => server.stop());
 const box = { name: 'Box', centre: [1.3, 0, 0], halfSize: [1.2, 1, 1], lattice: [4, 3, 3] };
 let count = 0;
 const fresh = (word: string) => `${word} ${count++}`;
+
+const keepOut = { name: 'Rail', geometry: { kind: 'halfSpace', point: [0, 0, 2], normal: [0, 0, -1] } };
+const lock = { name: 'Flange', patches: ['whatever'] };
+
+async function newDrawn(path: string, body: object): Promise<string> {
+	return (await ok<{ id: string }>(server, scene.token, 'POST', `/api/studies/${scene.study.id}/${path}`, body)).id;
+}
+
+async function putAway(path: string, body: object): Promise<string> {
+	const id = await newDrawn(path, body);
+	await ok(server, scene.token, 'DELETE', `/api/${path}/${id}`);
+	return id;
+}
 
 async function newBox(): Promise<string> {
 	return (await ok<{ id: string }>(server, scene.token, 'POST', `/api/studies/${scene.study.id}/boxes`, box)).id;
@@ -89,6 +104,26 @@ async function valid(
 			await ok(server, scene.token, 'DELETE', `/api/boxes/${id}`);
 			return { id };
 		}
+		case 'createKeepOut':
+			return { body: keepOut };
+		case 'replaceKeepOut':
+			return { id: await newDrawn('keep-outs', keepOut), body: keepOut };
+		case 'removeKeepOut':
+			return { id: await newDrawn('keep-outs', keepOut) };
+		case 'restoreKeepOut':
+			return { id: await putAway('keep-outs', keepOut) };
+		case 'importKeepOut':
+			return { query: { filename: 'a.stl' } };
+		case 'getKeepOutMesh':
+			return { id: keepOutMesh };
+		case 'createLock':
+			return { body: lock };
+		case 'replaceLock':
+			return { id: await newDrawn('locks', lock), body: lock };
+		case 'removeLock':
+			return { id: await newDrawn('locks', lock) };
+		case 'restoreLock':
+			return { id: await putAway('locks', lock) };
 		case 'importShape':
 			return { query: { filename: 'a.stl' } };
 		case 'importMap':

@@ -64,7 +64,14 @@ export function prepareMove(surface: Surface, boxes: DesignBox[], options: Prepa
 	}
 	boxes.forEach(checkBox);
 	const tied = symmetry ? tieBoxes(boxes, symmetry) : null;
-	const plane = symmetry ? { flags: onPlane(surface.positions, symmetry), normal: planeNormal(symmetry) } : null;
+	const plane = symmetry
+		? {
+				plane: symmetry,
+				positions: surface.positions,
+				flags: onPlane(surface.positions, symmetry),
+				normal: planeNormal(symmetry)
+			}
+		: null;
 	if (options.mode === 'surface') {
 		const space = new SurfaceSpace(surface, tied?.boxes ?? boxes, boxes.length, smoothing, weights, plane);
 		checkpoint?.(1);
@@ -367,6 +374,7 @@ class Move implements PreparedMove {
 		const volumeAfter = volumeBefore + this.volumeChange.cubic(displacement, null)[0];
 		return {
 			moved: this.moved,
+			partners: this.space.partners,
 			displacement,
 			predicted,
 			predictedWeighted: objectives.reduce((sum, o, i) => sum + direction(o) * predicted[i].change, 0),

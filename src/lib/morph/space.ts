@@ -2,10 +2,11 @@ import { MorphError } from './errors';
 import { MovedSet } from './moved-set';
 import type { BoxOperator } from './operator';
 import type { PlaceRows } from './place-rows';
+import { mirrorPartners, reflectVector } from './symmetry';
 import type { Reduced, ReducedSystem } from './system';
-import type { DesignBox } from './types';
+import type { DesignBox, SymmetryPlane } from './types';
 
-type Vec3 = readonly [number, number, number];
+type Vec3 = [number, number, number];
 
 /** The displacements that a move may have: a space of reduced vectors with the metric as its inner product. */
 export interface MoveSpace {
@@ -14,6 +15,8 @@ export interface MoveSpace {
 	readonly unknowns: number;
 	/** How near to each other two places are told apart, metres. */
 	readonly spacing: number;
+	/** moved.length: each vertex's mirror image among the moved, -1 where it has none; null without symmetry. */
+	readonly partners: Int32Array | null;
 	/** What the vertices' displacements see of a gradient (N x 3) in the reduced space. */
 	row(gradient: Float64Array): Reduced;
 	/** The same for the k-th of some places. */
@@ -24,6 +27,32 @@ export interface MoveSpace {
 	field(reduced: Reduced): Float64Array;
 	/** The control points' displacements by box, nPoints x 3; none in surface mode. */
 	lattices(reduced: Reduced): Float64Array[];
+}
+
+/** What a move keeps of a symmetry. */
+export interface Mirror {
+	normal: Vec3;
+	/** N: 1 on the plane. */
+	flags: Uint8Array;
+	/** moved.length: each vertex's mirror image among the moved, -1 where it has none. */
+	partners: Int32Array;
+}
+
+/** Makes a field symmetric to the last bit, which sums in another order are not quite. */
+function mirrorField(field: Float64Array, { partners, normal }: Mirror): void {
+	for (let i = 0; i < partners.length; i++) {
+		const j = partners[i];
+		if (j <= i) continue;
+		const own: [number, number, number] = [field[3 * i], field[3 * i + 1], field[3 * i + 2]];
+		const image = reflectVector([field[3 * j], field[3 * j + 1], field[3 * j + 2]], normal);
+		const mean: [number, number, number] = [
+			0.5 * (own[0] + image[0]),
+			0.5 * (own[1] + image[1]),
+			0.5 * (own[2] + image[2])
+		];
+		field.set(mean, 3 * i);
+		field.set(reflectVector(mean, normal), 3 * j);
+	}
 }
 
 /** Vertices on the symmetry plane lose the part of a field across it. */
@@ -44,16 +73,18 @@ export class LatticeSpace implements MoveSpace {
 	readonly unknowns: number;
 	readonly spacing: number;
 	private readonly set: MovedSet;
+	private readonly plane: Mirror | null;
 
 	constructor(
 		private readonly operators: BoxOperator[],
 		private readonly system: ReducedSystem,
 		vertexCount: number,
-		private readonly plane: { flags: Uint8Array; normal: Vec3 } | null
+		mirror: { positions: Float64Array; plane: SymmetryPlane; flags: Uint8Array; normal: Vec3 } | null
 	) {
 		this.set = new MovedSet(operators, vertexCount);
 		this.moved = this.set.ids;
 		this.unknowns = system.unknowns;
+		this.plane = mirror && { ...mirror, partners: mirrorPartners(mirror.positions, this.moved, mirror.plane) };
 		// A lattice cannot bend between its points, so places nearer than a part of their distance say nearly the same.
 		this.spacing =
 			0.35 * Math.min(...operators.flatMap(({ box }) => box.halfSize.map((h, d) => (2 * h) / (box.lattice[d] - 1))));
@@ -89,10 +120,17 @@ export class LatticeSpace implements MoveSpace {
 		return this.system.expand(reduced);
 	}
 
+	get partners(): Int32Array | null {
+		return this.plane?.partners ?? null;
+	}
+
 	/** The surface's displacement by lattice displacements, moved x 3. */
 	ofLattices(lattices: Float64Array[]): Float64Array {
 		const field = this.set.evaluate(lattices);
-		if (this.plane) keepOnPlane(field, this.moved, this.plane.flags, this.plane.normal);
+		if (this.plane) {
+			keepOnPlane(field, this.moved, this.plane.flags, this.plane.normal);
+			mirrorField(field, this.plane);
+		}
 		return field;
 	}
 }

@@ -8,6 +8,8 @@ export interface StoreOptions {
 	triangles: Uint32Array;
 	/** m^3 that the stored surface must enclose: give it where the volume is an equality. */
 	targetVolume?: number;
+	/** Mirror images among the moved (MoveSolution.partners): nudged together, so that a symmetric surface stays so. */
+	partners?: Int32Array | null;
 	/** What the volume is summed about, metres: the surface's origin; default near the surface. */
 	origin?: readonly [number, number, number];
 }
@@ -67,7 +69,7 @@ export function storePositions(
 	displacement: Float64Array,
 	options: StoreOptions
 ): StoredPositions {
-	const { metresPerUnit, triangles, targetVolume } = options;
+	const { metresPerUnit, triangles, targetVolume, partners } = options;
 	const positions = parent.slice();
 	for (let i = 0; i < moved.length; i++) {
 		for (let d = 0; d < 3; d++) {
@@ -91,6 +93,10 @@ export function storePositions(
 		let rest = targetVolume - volume;
 		for (let k = 0, i = 0; k < moved.length; k++, i = (i + stride) % moved.length) {
 			if (Math.abs(rest) <= 0.1 * VOLUME_TOLERANCE * size) break;
+			const image = partners ? partners[i] : -1;
+			// A pair is nudged once, from its first.
+			if (image >= 0 && image < i) continue;
+			const twice = image > i ? 2 : 1;
 			let bestGain = 0;
 			let bestAt = -1;
 			let bestValue = 0;
@@ -103,7 +109,7 @@ export function storePositions(
 				const exact = (parent[at] * metresPerUnit + dx) / metresPerUnit;
 				if (round === 0 && exact > positions[at] !== up) continue;
 				const next = nextFloat32(positions[at], up);
-				const gain = slope * (next - positions[at]) * metresPerUnit;
+				const gain = twice * slope * (next - positions[at]) * metresPerUnit;
 				// The longest stride that does not overshoot.
 				if (Math.abs(gain) <= 1.5 * Math.abs(rest) && Math.abs(gain) > Math.abs(bestGain)) {
 					bestGain = gain;
@@ -112,10 +118,18 @@ export function storePositions(
 				}
 			}
 			if (bestAt < 0) continue;
+			if (twice === 2) {
+				// The image's coordinate that moves with it: the same one for a plane across an axis, found by its displacement.
+				const other = 3 * moved[image] + (bestAt % 3);
+				const opposite = displacement[3 * image + (bestAt % 3)] === -displacement[3 * i + (bestAt % 3)];
+				const step = bestValue - positions[bestAt];
+				positions[other] = Math.fround(positions[other] + (opposite ? -step : step)) + 0;
+				metres[other] = positions[other] * metresPerUnit;
+			}
 			positions[bestAt] = bestValue + 0;
 			metres[bestAt] = positions[bestAt] * metresPerUnit;
 			rest -= bestGain;
-			nudges++;
+			nudges += twice;
 		}
 		volume = volumeOf(metres, triangles, origin);
 	}

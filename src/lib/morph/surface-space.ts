@@ -3,10 +3,11 @@ import { MorphError } from './errors';
 import { helmholtz, solveSparse, type SparseMatrix } from './laplacian';
 import type { PlaceRows } from './place-rows';
 import { emptyBox, keepOnPlane, type MoveSpace } from './space';
+import { mirrorPartners } from './symmetry';
 import type { Reduced } from './system';
-import type { DesignBox, Surface } from './types';
+import type { DesignBox, Surface, SymmetryPlane } from './types';
 
-type Vec3 = readonly [number, number, number];
+type Vec3 = [number, number, number];
 
 const SOLVE_TOLERANCE = 1e-10;
 
@@ -45,6 +46,7 @@ export class SurfaceSpace implements MoveSpace {
 	readonly unknowns: number;
 	readonly spacing: number;
 	readonly insideCounts: number[];
+	readonly partners: Int32Array | null;
 	/** moved x 3: w n */
 	private readonly directions: Float64Array;
 	private readonly matrix: SparseMatrix;
@@ -61,7 +63,7 @@ export class SurfaceSpace implements MoveSpace {
 		given: number,
 		smoothing: number,
 		weights: Float64Array | undefined,
-		plane: { flags: Uint8Array; normal: Vec3 } | null
+		mirror: { plane: SymmetryPlane; flags: Uint8Array; normal: Vec3 } | null
 	) {
 		const { positions, triangles, mass, normals } = surface;
 		const count = mass.length;
@@ -93,7 +95,8 @@ export class SurfaceSpace implements MoveSpace {
 		this.moved.forEach((v, i) => {
 			for (let d = 0; d < 3; d++) this.directions[3 * i + d] = share[v] * normals[3 * v + d];
 		});
-		if (plane) keepOnPlane(this.directions, this.moved, plane.flags, plane.normal);
+		if (mirror) keepOnPlane(this.directions, this.moved, mirror.flags, mirror.normal);
+		this.partners = mirror && mirrorPartners(positions, this.moved, mirror.plane);
 		this.matrix = helmholtz(
 			positions,
 			triangles,
@@ -128,7 +131,12 @@ export class SurfaceSpace implements MoveSpace {
 	}
 
 	solve([row]: Reduced): Reduced {
-		return [solveSparse(this.matrix, row, SOLVE_TOLERANCE)];
+		const q = solveSparse(this.matrix, row, SOLVE_TOLERANCE);
+		// A symmetric surface in a symmetric metric: what differs is the solver's tolerance.
+		this.partners?.forEach((j, i) => {
+			if (j > i) q[i] = q[j] = 0.5 * (q[i] + q[j]);
+		});
+		return [q];
 	}
 
 	field([q]: Reduced): Float64Array {

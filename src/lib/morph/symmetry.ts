@@ -201,3 +201,52 @@ export function onPlane(positions: Float64Array, plane: SymmetryPlane): Uint8Arr
 	}
 	return out;
 }
+
+/**
+ * Which of some vertices are mirror images of each other.
+ * @param moved ascending ids
+ * @returns moved.length: position in `moved` of the image (its own, on the plane), -1 where there is none
+ */
+export function mirrorPartners(positions: Float64Array, moved: Uint32Array, plane: SymmetryPlane): Int32Array {
+	const n = planeNormal(plane);
+	let low = Infinity;
+	let high = -Infinity;
+	for (let i = 0; i < positions.length; i++) {
+		if (positions[i] < low) low = positions[i];
+		if (positions[i] > high) high = positions[i];
+	}
+	// Coordinates as float32 files give them, told apart well below their last place.
+	const unit = 1e-9 * (high - low) || 1;
+	const key = (x: number, y: number, z: number, k: number) => {
+		// A vertex near the edge of a cell is looked for in the cell beside, too.
+		const a = Math.floor(x / unit + (k & 1 ? 0.5 : 0));
+		const b = Math.floor(y / unit + (k & 2 ? 0.5 : 0));
+		const c = Math.floor(z / unit + (k & 4 ? 0.5 : 0));
+		return `${a} ${b} ${c}`;
+	};
+	const out = new Int32Array(moved.length).fill(-1);
+	for (let k = 0; k < 8; k++) {
+		const index = new Map<string, number>();
+		let missing = 0;
+		for (let i = 0; i < moved.length; i++) {
+			if (out[i] >= 0) continue;
+			missing++;
+			const v = 3 * moved[i];
+			index.set(key(positions[v], positions[v + 1], positions[v + 2], k), i);
+		}
+		if (missing === 0) break;
+		for (let i = 0; i < moved.length; i++) {
+			if (out[i] >= 0) continue;
+			const v = 3 * moved[i];
+			const p = [positions[v], positions[v + 1], positions[v + 2]];
+			const s = 2 * alongNormal(p, plane, n);
+			const j = index.get(key(p[0] - s * n[0], p[1] - s * n[1], p[2] - s * n[2], k));
+			if (j === undefined || (out[j] >= 0 && out[j] !== i)) continue;
+			out[i] = j;
+			out[j] = i;
+		}
+		// Most surfaces find all their pairs at once, or have few.
+		if (k === 0 && missing > 0 && out.every((j) => j < 0)) break;
+	}
+	return out;
+}

@@ -307,6 +307,8 @@ export interface MoveSolution {
 	lattices: Float64Array[];
 	/** Vertices in any box, ascending. */
 	moved: Uint32Array;
+	/** moved.length: position in `moved` of each vertex's mirror image, -1 where it has none; null without symmetry. */
+	partners: Int32Array | null;
 	/** moved.length x 3, metres. */
 	displacement: Float64Array;
 	/** First-order change of each objective, in the order given. */

@@ -1,8 +1,8 @@
 /** Geometry of design boxes on the page: axes, faces, dragging, typed angles. Metres, radians unless said; no drawing. */
 import { Euler, MathUtils, Matrix4, Quaternion, Vector3 } from 'three';
-import type { Box, BoxCreate, Held } from '$lib/api/schemas';
-import { controlPoints, type DesignBox } from '$lib/morph';
-import type { Vec3 } from '$lib/workers/display-protocol';
+import type { Box, BoxCreate, Held, MoveAnswer, Plane } from '$lib/api/schemas';
+import { controlPoints, mirrorBox, type DesignBox } from '$lib/morph';
+import type { DisplayInput, Vec3 } from '$lib/workers/display-protocol';
 
 export type FaceName = keyof Held;
 export type AxisIndex = 0 | 1 | 2;
@@ -149,6 +149,7 @@ export function designBox(box: BoxCreate & { id: string }): DesignBox {
 		basis: box.basis ?? 'bernstein',
 		...(degree === undefined ? {} : { degree }),
 		held: { ...box.held },
+		heldPoints: [...(box.heldPoints ?? [])],
 		axes: [...box.axes],
 		frame: box.frame
 	};
@@ -156,3 +157,32 @@ export function designBox(box: BoxCreate & { id: string }): DesignBox {
 
 /** The lattice at rest, as the engine has it: nPoints x 3, metres, u slowest, w fastest. */
 export const restPoints = (box: BoxCreate & { id: string }) => Float32Array.from(controlPoints(designBox(box)));
+
+const fromBase64 = (text: string): ArrayBuffer => Uint8Array.from(atob(text), (c) => c.charCodeAt(0)).buffer;
+
+/**
+ * What the display worker needs to show a move: the boxes (and their mirror images) with their lattices' displacements, or the
+ * displacement by vertex where the lattices do not give it.
+ */
+export function shownMove(
+	{ lattices, field }: MoveAnswer,
+	boxes: Box[],
+	symmetry: Plane | null
+): Omit<DisplayInput<'move'>, 'exaggeration'> {
+	const known = lattices.flatMap(({ boxId, mirrored, displacement }) => {
+		const box = boxes.find((b) => b.id === boxId);
+		if (!box) return [];
+		const own = designBox(box);
+		return [
+			{ box: mirrored && symmetry ? mirrorBox(own, symmetry).box : own, lattice: Float64Array.from(displacement) }
+		];
+	});
+	return {
+		boxes: known.map((k) => k.box),
+		lattices: known.map((k) => k.lattice),
+		field: field && {
+			vertices: new Uint32Array(fromBase64(field.vertices)),
+			displacement: new Float32Array(fromBase64(field.displacement))
+		}
+	};
+}

@@ -12,7 +12,7 @@ import type {
 	Share,
 	Vec3
 } from '$lib/workers/display-protocol';
-import { designBox, roundTo, type Ray } from './bench-geometry';
+import { designBox, roundTo, shownMove, type Ray } from './bench-geometry';
 import { BoxesState } from './bench-boxes.svelte';
 import { MoveState, type Preview } from './bench-move.svelte';
 
@@ -292,15 +292,8 @@ export class BenchState {
 
 	async #showMove({ boxes, answer }: Preview) {
 		try {
-			const known = answer.lattices.flatMap(({ boxId, displacement }) => {
-				const box = boxes.find((b) => b.id === boxId);
-				return box ? [{ box: designBox(box), lattice: Float64Array.from(displacement) }] : [];
-			});
-			const moved = await this.#worker.ask('move', {
-				boxes: known.map((k) => k.box),
-				lattices: known.map((k) => k.lattice),
-				exaggeration: this.exaggeration
-			});
+			const input = shownMove(answer, boxes, this.study?.symmetry ?? null);
+			const moved = await this.#worker.ask('move', { ...input, exaggeration: this.exaggeration });
 			if (this.move.preview?.answer !== answer) return;
 			this.moved = moved;
 			this.fields = { ...this.fields, move: moved.field };

@@ -16,7 +16,8 @@ import type {
 	FieldName,
 	Pick,
 	Share,
-	Vec3
+	Vec3,
+	VertexField
 } from './display-protocol';
 
 const MM_PER_M = 1000;
@@ -58,7 +59,7 @@ export class DisplayModel {
 			const there = scaled(this.#sized(new Float32Array(positions), here.length), metresPerUnit);
 			return this.#keep('parent', along(normals, there, here, MM_PER_M));
 		},
-		move: ({ boxes, lattices, exaggeration }) => this.#move(boxes, lattices, exaggeration),
+		move: ({ boxes, lattices, field, exaggeration }) => this.#move(boxes, lattices, field ?? null, exaggeration),
 		exaggerate: ({ exaggeration }) => this.#draw(exaggeration),
 		histogram: ({ field, extent, bins }) => {
 			const values = this.#fields.get(field);
@@ -132,18 +133,22 @@ export class DisplayModel {
 		return motion;
 	}
 
-	#move(boxes: DesignBox[], lattices: Float64Array[], exaggeration: number): DisplayMove {
+	#move(boxes: DesignBox[], lattices: Float64Array[], field: VertexField | null, exaggeration: number): DisplayMove {
 		const { positions, normals, areas } = this.#surface;
 		const shift = new Float64Array(positions.length);
 		const touched = new Uint8Array(areas.length);
-		boxes.forEach((box, b) => {
-			const motion = this.#motion(box);
-			const displacement = motion.displace(lattices[b]);
-			motion.inside.forEach((v, i) => {
+		const add = (inside: Uint32Array, displacement: ArrayLike<number>) =>
+			inside.forEach((v, i) => {
 				touched[v] = 1;
 				for (let k = 0; k < 3; k++) shift[3 * v + k] += displacement[3 * i + k];
 			});
-		});
+		if (field) add(field.vertices, field.displacement);
+		else {
+			boxes.forEach((box, b) => {
+				const motion = this.#motion(box);
+				add(motion.inside, motion.displace(lattices[b]));
+			});
+		}
 		const vertices = new Uint32Array(touched.reduce((sum, t) => sum + t, 0));
 		for (let v = 0, at = 0; v < touched.length; v++) if (touched[v]) vertices[at++] = v;
 		const displacement = new Float64Array(3 * vertices.length);

@@ -65,6 +65,14 @@ export interface Pick {
 
 export type FieldName = 'map' | 'move' | 'parent';
 
+/** Displacement of some vertices. */
+export interface VertexField {
+	/** Ascending ids. */
+	vertices: Uint32Array;
+	/** Metres, x, y, z of each. */
+	displacement: Float32Array;
+}
+
 /** Requests by name: what goes in and what comes out. */
 export interface DisplayCalls {
 	/** Takes the served bytes: float32 positions in the study's unit, uint32 triangles. */
@@ -73,8 +81,14 @@ export interface DisplayCalls {
 	map: [{ values: ArrayBuffer; scale: number }, DisplayField];
 	/** Another shape's served positions over the same triangles: how far this surface lies outside it along its normal, mm. */
 	difference: [{ positions: ArrayBuffer; metresPerUnit: number }, DisplayField];
-	/** Applies control point displacements (metres, nPoints x 3) to the loaded surface. */
-	move: [{ boxes: DesignBox[]; lattices: Float64Array[]; exaggeration: number }, DisplayMove];
+	/**
+	 * Applies control point displacements (metres, nPoints x 3) to the loaded surface, or a displacement by vertex where it is
+	 * given.
+	 */
+	move: [
+		{ boxes: DesignBox[]; lattices: Float64Array[]; field?: VertexField | null; exaggeration: number },
+		DisplayMove
+	];
 	/** The last move again, exaggerated otherwise. */
 	exaggerate: [{ exaggeration: number }, DisplayMove];
 	histogram: [{ field: FieldName; extent: number; bins: number }, Float32Array];

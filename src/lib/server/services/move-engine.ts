@@ -123,6 +123,7 @@ export function storedPositions({ parent, solution, targetVolume }: Moved): Stor
 		metresPerUnit: parent.metresPerUnit,
 		triangles: parent.mesh.triangles,
 		targetVolume,
+		partners: solution.partners,
 		origin: parent.surface.origin
 	});
 }
