@@ -20,3 +20,4 @@ export { edgeTable, type EdgeTable } from './half-edges';
 export { type PlaceConstraint, type PlaceRows, type PlaceSource } from './place-rows';
 export { prepareKeepOut, type KeepOutGeometry, type KeepOutSide, type PreparedKeepOut } from './keep-out';
 export { lockWeights, type SurfaceLock } from './locks';
+export { prepareThickness, type PreparedThickness, type ThicknessOptions } from './thickness';

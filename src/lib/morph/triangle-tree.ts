@@ -138,6 +138,16 @@ export class TriangleTree {
 		}
 	}
 
+	/** N: place of each vertex in the order in which the leaves first name them; after all others for those without triangle. */
+	vertexRanks(): Uint32Array {
+		const ranks = new Uint32Array(this.positions.length / 3).fill(0xffffffff);
+		let next = 0;
+		for (let i = 0; i < this.corners.length; i++) {
+			if (ranks[this.corners[i]] === 0xffffffff) ranks[this.corners[i]] = next++;
+		}
+		return ranks;
+	}
+
 	/** Squared distance of a point to a node's box. */
 	private boxSquare(node: number, x: number, y: number, z: number): number {
 		const b = this.bounds;
