@@ -39,6 +39,7 @@ export type MorphErrorCode =
 	| 'thickness-invalid'
 	| 'lock-invalid'
 	| 'part-invalid'
+	| 'rehearsal-invalid'
 	| 'unsupported';
 
 /** Where in the input the fault sits. Counts start at 1 for lines and rows (as an editor shows them), at 0 for the rest. */

@@ -21,3 +21,4 @@ export { type PlaceConstraint, type PlaceRows, type PlaceSource } from './place-
 export { prepareKeepOut, type KeepOutGeometry, type KeepOutSide, type PreparedKeepOut } from './keep-out';
 export { lockWeights, type SurfaceLock } from './locks';
 export { prepareThickness, type PreparedThickness, type ThicknessOptions } from './thickness';
+export { rehearse, type Rehearsal, type RehearsalKind, type RehearsalSpec } from './rehearsal';

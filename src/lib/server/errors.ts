@@ -114,6 +114,7 @@ const MORPH_CODES: Record<MorphErrorCode, ErrorCode> = {
 	'thickness-invalid': 'invalid',
 	'lock-invalid': 'invalid',
 	'part-invalid': 'invalid',
+	'rehearsal-invalid': 'invalid',
 	unsupported: 'unsupported'
 };
 
