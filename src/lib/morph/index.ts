@@ -22,3 +22,5 @@ export { prepareKeepOut, type KeepOutGeometry, type KeepOutSide, type PreparedKe
 export { lockWeights, type SurfaceLock } from './locks';
 export { prepareThickness, type PreparedThickness, type ThicknessOptions } from './thickness';
 export { rehearse, type Rehearsal, type RehearsalKind, type RehearsalSpec } from './rehearsal';
+export { selfIntersections, type SelfIntersectionOptions, type SelfIntersections } from './self-intersection';
+export { TriangleTree } from './triangle-tree';

@@ -117,8 +117,6 @@ class Thickness implements PreparedThickness {
 	private readonly faced: Int32Array;
 	private readonly weights: Float64Array;
 	private readonly before: Float64Array;
-	/** Vertices in the order in which the tree meets them: neighbours one after the other, which caches like. */
-	private readonly rank: Uint32Array;
 
 	constructor(
 		private readonly surface: Surface,
@@ -130,7 +128,6 @@ class Thickness implements PreparedThickness {
 		this.faced = new Int32Array(n).fill(UNKNOWN);
 		this.weights = new Float64Array(2 * n);
 		this.before = new Float64Array(n);
-		this.rank = this.tree.vertexRanks();
 	}
 
 	thickness(positions: Float64Array, vertices: Uint32Array, reach = Infinity): Float64Array {
@@ -170,9 +167,11 @@ class Thickness implements PreparedThickness {
 	}
 
 	place(vertices: Uint32Array): PlaceConstraint {
-		const { tree, surface, least, faced, weights, before, rank, thin } = this;
+		const { tree, surface, least, faced, weights, before, thin } = this;
 		const { triangles } = surface;
-		const sorted = vertices.slice().sort((a, b) => rank[a] - rank[b]);
+		const { ranks } = tree;
+		// Neighbours one after the other, which caches like.
+		const sorted = vertices.slice().sort((a, b) => ranks[a] - ranks[b]);
 		const normals = new VertexNormals(triangles, sorted, surface.positions.length / 3);
 		const n = normals.normals;
 		this.look(sorted, normals);

@@ -3,6 +3,7 @@ import { MeshBVH } from 'three-mesh-bvh';
 
 const LEAF_TRIANGLES = 4;
 const STACK = 128;
+const UNUSED = 0xffffffff;
 
 /**
  * Bounding boxes of a mesh's triangles in a tree. three-mesh-bvh sorts the triangles; the loops that descend are our own,
@@ -22,8 +23,14 @@ export class TriangleTree {
 	readonly count: Uint32Array;
 	/** Triangle ids, leaf after leaf. */
 	readonly order: Uint32Array;
-	/** order.length x 3: their corners. */
+	/** order.length x 3: their corners, as indices into `points`. */
 	readonly corners: Uint32Array;
+	/** Vertices in the order in which the leaves first name them (M x 3): neighbours lie side by side, which caches like. */
+	readonly points: Float64Array;
+	/** M vertex ids of `points`. */
+	readonly vertices: Uint32Array;
+	/** N: index into `points` of each vertex; 0xffffffff for those in none of the triangles. */
+	readonly ranks: Uint32Array;
 	/** N x 3; those of the last refit. */
 	positions: Float64Array;
 
@@ -85,6 +92,19 @@ export class TriangleTree {
 			this.order[i] = subset ? subset[t] : t;
 			for (let k = 0; k < 3; k++) this.corners[3 * i + k] = index[3 * t + k];
 		}
+		this.ranks = new Uint32Array(positions.length / 3).fill(UNUSED);
+		const vertices = new Uint32Array(this.ranks.length);
+		let used = 0;
+		for (let i = 0; i < this.corners.length; i++) {
+			const v = this.corners[i];
+			if (this.ranks[v] === UNUSED) {
+				this.ranks[v] = used;
+				vertices[used++] = v;
+			}
+			this.corners[i] = this.ranks[v];
+		}
+		this.vertices = vertices.slice(0, used);
+		this.points = new Float64Array(3 * used);
 		this.bounds = new Float64Array(6 * right.length);
 		this.refit(positions);
 	}
@@ -96,7 +116,13 @@ export class TriangleTree {
 	 */
 	refit(positions: Float64Array): void {
 		this.positions = positions;
-		const { bounds, right, first, count, corners } = this;
+		const { bounds, right, first, count, corners, points, vertices } = this;
+		for (let i = 0; i < vertices.length; i++) {
+			const v = 3 * vertices[i];
+			points[3 * i] = positions[v];
+			points[3 * i + 1] = positions[v + 1];
+			points[3 * i + 2] = positions[v + 2];
+		}
 		for (let node = right.length - 1; node >= 0; node--) {
 			let x0 = Infinity;
 			let y0 = Infinity;
@@ -108,9 +134,9 @@ export class TriangleTree {
 				const end = 3 * (first[node] + count[node]);
 				for (let i = 3 * first[node]; i < end; i++) {
 					const v = 3 * corners[i];
-					const x = positions[v];
-					const y = positions[v + 1];
-					const z = positions[v + 2];
+					const x = points[v];
+					const y = points[v + 1];
+					const z = points[v + 2];
 					if (x < x0) x0 = x;
 					if (x > x1) x1 = x;
 					if (y < y0) y0 = y;
@@ -138,16 +164,6 @@ export class TriangleTree {
 		}
 	}
 
-	/** N: place of each vertex in the order in which the leaves first name them; after all others for those without triangle. */
-	vertexRanks(): Uint32Array {
-		const ranks = new Uint32Array(this.positions.length / 3).fill(0xffffffff);
-		let next = 0;
-		for (let i = 0; i < this.corners.length; i++) {
-			if (ranks[this.corners[i]] === 0xffffffff) ranks[this.corners[i]] = next++;
-		}
-		return ranks;
-	}
-
 	/** Squared distance of a point to a node's box. */
 	private boxSquare(node: number, x: number, y: number, z: number): number {
 		const b = this.bounds;
@@ -172,7 +188,7 @@ export class TriangleTree {
 	 * @returns whether there is one
 	 */
 	closest(x: number, y: number, z: number, limitSquare: number): boolean {
-		const { right, first, count, corners, order, positions: p, stack, keys } = this;
+		const { right, first, count, corners, order, points: p, stack, keys } = this;
 		this.triangle = -1;
 		this.square = limitSquare;
 		let top = 0;
@@ -275,7 +291,8 @@ export class TriangleTree {
 	 * @param limit in units of the direction
 	 */
 	leave(x: number, y: number, z: number, dx: number, dy: number, dz: number, limit: number, without: number): boolean {
-		const { right, first, count, corners, order, positions: p, stack, keys, bounds } = this;
+		const { right, first, count, corners, order, points: p, stack, keys, bounds } = this;
+		const own = without < 0 ? UNUSED : this.ranks[without];
 		this.triangle = -1;
 		this.distance = limit;
 		// Never minus infinity for -0: the slab test below counts on it.
@@ -295,7 +312,7 @@ export class TriangleTree {
 					const va = corners[3 * i];
 					const vb = corners[3 * i + 1];
 					const vc = corners[3 * i + 2];
-					if (va === without || vb === without || vc === without) continue;
+					if (va === own || vb === own || vc === own) continue;
 					const a = 3 * va;
 					const b = 3 * vb;
 					const c = 3 * vc;
