@@ -7,7 +7,7 @@ const DEPENDENT = 1e-10;
 const APART = 1e-6;
 
 export interface ActiveSetProblem {
-	/** m x m inner products of the constraints' rows in the inverse metric, unit diagonal. */
+	/** m x m inner products of the constraints' rows in the inverse metric, unit diagonal; symmetric to the last bit. */
 	gram: number[][];
 	/** m: value of each constraint at the free optimum, less its bound. */
 	slack: number[];

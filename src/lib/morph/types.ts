@@ -268,7 +268,7 @@ export interface PrepareOptions extends WithCheckpoint {
 	 * the plane stay on it. Default none.
 	 */
 	symmetry?: SymmetryPlane;
-	/** How sums over vertices are formed; 'auto' takes the cheaper. Both give the same within 1e-8 (docs/numerics.md). */
+	/** How sums over vertices are formed; 'auto' takes the cheaper. Both give the same within 5e-8 of the step (docs/numerics.md). */
 	path?: 'auto' | 'direct' | 'moments';
 }
 
