@@ -9,6 +9,7 @@ import {
 	toMetres,
 	writeStl
 } from '../src/lib/morph';
+import { helmholtz, solveSparse } from '../src/lib/morph/laplacian';
 import { BOX, SMOOTHING, STEP, workloadDensity, workloadStl } from './workload';
 
 /** One run's figures, with the keys of reference.py where both have them. */
@@ -37,6 +38,8 @@ const median = (values: number[]) => {
 	const middle = sorted.length >> 1;
 	return sorted.length % 2 ? sorted[middle] : (sorted[middle - 1] + sorted[middle]) / 2;
 };
+/** Not part of the lattice's move. */
+const SURFACE_STAGES = ['laplacian', 'surface_filter'];
 const round = (x: number) => Math.round(x * 1e4) / 1e4;
 
 /** From the STL's bytes to the moved STL's bytes, once. */
@@ -78,6 +81,17 @@ function once(bytes: Uint8Array): {
 	lap('quality');
 	writeStl({ ...mesh, positions: stored.positions }, { encoding: 'binary' });
 	lap('write');
+	// The second half: the same descent in surface mode, where every vertex is free.
+	const every = Int32Array.from(surface.mass, (_, v) => v);
+	lap();
+	const matrix = helmholtz(surface.positions, surface.triangles, every, surface.mass, SMOOTHING);
+	lap('laplacian');
+	const smooth = solveSparse(
+		matrix,
+		density.map((s, v) => s * surface.mass[v]),
+		1e-8
+	);
+	lap('surface_filter');
 	return {
 		seconds,
 		figures: {
@@ -95,7 +109,8 @@ function once(bytes: Uint8Array): {
 			min_angle_deg: checks.minAngle.value,
 			path: prepared.path,
 			volume_after_float64: solution.volumeAfter,
-			nudges: stored.nudges
+			nudges: stored.nudges,
+			filtered_norm: Math.sqrt(smooth.reduce((sum, x, v) => sum + surface.mass[v] * x * x, 0))
 		}
 	};
 }
@@ -107,7 +122,9 @@ export function runStandard(level: number, repeat: number): BenchFigures {
 	const last = runs[runs.length - 1];
 	const seconds: Record<string, number> = {};
 	for (const name of Object.keys(last.seconds)) seconds[name] = round(median(runs.map((r) => r.seconds[name])));
-	const sum = (s: Record<string, number>) => Object.values(s).reduce((a, b) => a + b, 0);
-	const total = round(median(runs.map((r) => sum(r.seconds))));
-	return { ...last.figures, seconds, lattice_total: total, total } as BenchFigures;
+	const sum = (s: Record<string, number>, skipped: string[]) =>
+		Object.entries(s).reduce((total, [name, value]) => (skipped.includes(name) ? total : total + value), 0);
+	const lattice_total = round(median(runs.map((r) => sum(r.seconds, SURFACE_STAGES))));
+	const total = round(median(runs.map((r) => sum(r.seconds, []))));
+	return { ...last.figures, seconds, lattice_total, total } as BenchFigures;
 }

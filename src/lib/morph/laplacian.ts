@@ -84,14 +84,24 @@ function merge(raw: SparseMatrix): SparseMatrix {
 	const merged = new Uint32Array(size + 1);
 	let at = 0;
 	for (let i = 0; i < size; i++) {
-		const order = Array.from(columns.subarray(starts[i], starts[i + 1]), (_, k) => starts[i] + k);
-		order.sort((p, q) => columns[p] - columns[q] || p - q);
-		const row = order.map((k) => [columns[k], values[k]]);
-		for (const [column, value] of row) {
-			if (at > merged[i] && columns[at - 1] === column) values[at - 1] += value;
+		const end = starts[i + 1];
+		// Rows are short: a dozen entries, sorted where they stand; equal columns keep their order.
+		for (let k = starts[i] + 1; k < end; k++) {
+			const column = columns[k];
+			const value = values[k];
+			let j = k - 1;
+			for (; j >= starts[i] && columns[j] > column; j--) {
+				columns[j + 1] = columns[j];
+				values[j + 1] = values[j];
+			}
+			columns[j + 1] = column;
+			values[j + 1] = value;
+		}
+		for (let k = starts[i]; k < end; k++) {
+			if (at > merged[i] && columns[at - 1] === columns[k]) values[at - 1] += values[k];
 			else {
-				columns[at] = column;
-				values[at++] = value;
+				columns[at] = columns[k];
+				values[at++] = values[k];
 			}
 		}
 		merged[i + 1] = at;
