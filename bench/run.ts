@@ -1,15 +1,16 @@
 import {
 	applyDisplacement,
 	checkMove,
+	helmholtz,
 	makeSurface,
 	nodalGradient,
 	prepareMove,
 	readStl,
+	solveSparse,
 	storePositions,
 	toMetres,
 	writeStl
 } from '../src/lib/morph';
-import { helmholtz, solveSparse } from '../src/lib/morph/laplacian';
 import { BOX, SMOOTHING, STEP, workloadDensity, workloadStl } from './workload';
 
 /** One run's figures, with the keys of reference.py where both have them. */

@@ -12,6 +12,7 @@ export { matchMap } from './map-match';
 export { displayDensity, mapTotal, nodalGradient, type NodalMap } from './nodal';
 export { checkBox, controlPoints, embed, pointIndex } from './box';
 export { computeMove, prepareMove } from './move';
+export { helmholtz, solveSparse, type SparseMatrix } from './laplacian';
 export { mirrorBox } from './symmetry';
 export { latticeMotion, type LatticeMotion } from './motion';
 export { applyDisplacement, storePositions } from './store';

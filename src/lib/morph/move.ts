@@ -7,7 +7,7 @@ import { linearPart, type LinearPart } from './linear-constraints';
 import { BoxOperator } from './operator';
 import { PlaceRounds, placeSets, type PlaceSet } from './places';
 import { reports } from './reports';
-import { LatticeSpace, emptyBox, type MoveSpace } from './space';
+import { LatticeSpace, emptyBox, lockedBox, type MoveSpace } from './space';
 import { applyDisplacement } from './store';
 import { SurfaceSpace } from './surface-space';
 import { onPlane, planeNormal, tieBoxes, type Tie } from './symmetry';
@@ -84,6 +84,7 @@ export function prepareMove(surface: Surface, boxes: DesignBox[], options: Prepa
 		// A half model has nothing in the mirror images of its boxes.
 		if (op.inside.length === 0 && b >= boxes.length) return;
 		if (op.inside.length === 0) throw emptyBox(box);
+		if (weights && !op.inside.some((v) => weights[v] > 0)) throw lockedBox(box);
 		standing.push(b);
 		operators.push(op);
 	});

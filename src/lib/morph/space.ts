@@ -143,3 +143,12 @@ export const emptyBox = (box: DesignBox) =>
 		'Move or enlarge the box until it meets the surface.',
 		{ box: box.name ?? box.id }
 	);
+
+/** The refusal of a box in which nothing may move. */
+export const lockedBox = (box: DesignBox) =>
+	new MorphError(
+		'no-free-points',
+		`Everything in design box "${box.name ?? box.id}" is locked.`,
+		'Unlock a part of the surface in it, or leave the box out of the move.',
+		{ box: box.name ?? box.id }
+	);

@@ -1,6 +1,6 @@
 /** Geometry of design boxes on the page: axes, faces, dragging, typed angles. Metres, radians unless said; no drawing. */
 import { Euler, MathUtils, Matrix4, Quaternion, Vector3 } from 'three';
-import type { Box, BoxCreate, Held, MoveAnswer, Plane } from '$lib/api/schemas';
+import type { Box, BoxCreate, Held, Lock, MoveAnswer, Plane, Shape } from '$lib/api/schemas';
 import { controlPoints, mirrorBox, type DesignBox } from '$lib/morph';
 import type { DisplayInput, Vec3 } from '$lib/workers/display-protocol';
 
@@ -185,4 +185,30 @@ export function shownMove(
 			displacement: new Float32Array(fromBase64(field.displacement))
 		}
 	};
+}
+
+/** The triangles that locks leave alone on a shape, ascending. */
+export function lockedTriangles(locks: Lock[], { patches, topologyId }: Shape): Uint32Array {
+	const locked = new Set<number>();
+	const add = (first: number, count: number) => {
+		for (let t = first; t < first + count; t++) locked.add(t);
+	};
+	for (const lock of locks) {
+		for (const patch of patches) if (lock.patches.includes(patch.name)) add(patch.firstTriangle, patch.triangleCount);
+		if (lock.painted?.topologyId !== topologyId) continue;
+		const { ranges } = lock.painted;
+		for (let i = 0; i + 1 < ranges.length; i += 2) add(ranges[i], ranges[i + 1]);
+	}
+	return Uint32Array.from(locked).sort();
+}
+
+/** Ascending triangles as runs: first, count, first, count. */
+export function runsOf(triangles: Iterable<number>): number[] {
+	const ranges: number[] = [];
+	for (const t of triangles) {
+		const last = ranges.length - 2;
+		if (last >= 0 && ranges[last] + ranges[last + 1] === t) ranges[last + 1]++;
+		else ranges.push(t, 1);
+	}
+	return ranges;
 }

@@ -2,6 +2,7 @@ import { api, asProblem, type ApiProblem } from '$lib/api/client';
 import type { Box, ConstraintRequest, MoveAnswer, RecipeInput, Shape, Study } from '$lib/api/schemas';
 import type { BoxesState } from './bench-boxes.svelte';
 import { bodyOf } from './bench-boxes.svelte';
+import type { KeepingState } from './bench-keeping.svelte';
 
 export type VolumeChoice = 'hold' | 'atLeast' | 'atMost' | 'free';
 export type ObjectiveChoice = 'free' | 'hold' | 'atLeast' | 'atMost';
@@ -25,6 +26,18 @@ export class MoveState {
 	objectives = $state.raw<Record<string, { choice: ObjectiveChoice; value: number | null }>>({});
 	/** Only those that differ from the study's. */
 	weights = $state.raw<Record<string, number>>({});
+	mode = $state<'lattice' | 'surface'>('lattice');
+	/** How far inward and outward a vertex may go, metres; null: as far as it will. */
+	inward = $state<number | null>(null);
+	outward = $state<number | null>(null);
+	/** Least wall thickness, metres; null: any. */
+	thickness = $state<number | null>(null);
+	/** Smallest radius of curvature where the surface moves, metres; null: not checked. */
+	radius = $state<number | null>(null);
+	/** Keep the study's symmetry plane, where it has one. */
+	symmetric = $state(true);
+	/** Keep-outs and locks that this move does without. */
+	leftOut = $state.raw<string[]>([]);
 	/** Preview by itself when something changes. */
 	live = $state(true);
 	preview = $state.raw<Preview | null>(null);
@@ -37,6 +50,7 @@ export class MoveState {
 		readonly study: () => Study | null,
 		readonly shape: () => Shape | null,
 		readonly boxes: BoxesState,
+		readonly keeping: KeepingState,
 		readonly previewed: (preview: Preview) => void
 	) {}
 
@@ -53,17 +67,44 @@ export class MoveState {
 			if (choice === 'free') continue;
 			constraints.push({ kind: 'objective', objectiveId, bound: choice, ...(value === null ? {} : { value }) });
 		}
+		const { inward, outward } = this;
+		if (this.mode === 'lattice') {
+			for (const { id } of this.keeping.keepOuts)
+				if (this.keeps(id)) constraints.push({ kind: 'keepOut', keepOutId: id });
+			if (inward !== null || outward !== null) {
+				constraints.push({
+					kind: 'displacement',
+					...(inward === null ? {} : { inward }),
+					...(outward === null ? {} : { outward })
+				});
+			}
+			if (this.thickness !== null) constraints.push({ kind: 'thickness', least: this.thickness });
+		}
+		if (this.radius !== null) constraints.push({ kind: 'radius', least: this.radius });
+		const symmetry = this.study()?.symmetry;
 		return {
 			boxIds: this.used.map((b) => b.id),
-			mode: 'lattice',
+			mode: this.mode,
 			step: this.step,
 			smoothing: this.smoothing,
 			...(Object.keys(this.weights).length ? { weights: this.weights } : {}),
+			lockIds: this.keeping.locks.filter((l) => this.locks(l.id)).map((l) => l.id),
+			...(symmetry ? { symmetry: this.symmetric } : {}),
 			constraints
 		};
 	});
 
-	readonly #key = $derived.by(() => JSON.stringify([this.shape()?.id, this.recipe, this.used.map(bodyOf)]));
+	readonly #key = $derived.by(() =>
+		JSON.stringify([
+			this.shape()?.id,
+			this.recipe,
+			this.used.map(bodyOf),
+			// What a keep-out or a lock says counts as much as which of them are kept.
+			this.keeping.keepOuts.map(({ version: _v, updatedAt: _u, ...k }) => k),
+			this.keeping.locks.map(({ version: _v, updatedAt: _u, ...l }) => l),
+			this.study()?.symmetry
+		])
+	);
 
 	/** Why there can be no preview, in words; null when there can. */
 	readonly obstacle = $derived.by((): { text: string; mend: 'map' | 'box' | 'weight' } | null => {
@@ -124,6 +165,7 @@ export class MoveState {
 			do {
 				key = this.#key;
 				await this.boxes.flush();
+				await this.keeping.flush();
 			} while (key !== this.#key);
 			const [boxes, body] = [this.used, this.recipe];
 			if (abort.signal.aborted) return;
@@ -143,6 +185,19 @@ export class MoveState {
 		this.#abort?.abort();
 		this.#abort = null;
 		this.working = false;
+	}
+
+	keeps(keepOutId: string): boolean {
+		return !this.leftOut.includes(keepOutId);
+	}
+
+	locks(lockId: string): boolean {
+		return !this.leftOut.includes(lockId);
+	}
+
+	leaveOut(id: string, out: boolean) {
+		const others = this.leftOut.filter((o) => o !== id);
+		this.leftOut = out ? [...others, id] : others;
 	}
 
 	use(id: string, on: boolean) {

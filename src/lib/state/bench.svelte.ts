@@ -1,6 +1,6 @@
 import { getContext, setContext } from 'svelte';
 import { apiPath, asProblem, problemFromText, type ApiProblem } from '$lib/api/client';
-import type { Box, BoxCreate, SensitivityMap, Shape, ShapeSummary, Study } from '$lib/api/schemas';
+import type { Box, BoxCreate, KeepOut, Lock, SensitivityMap, Shape, ShapeSummary, Study } from '$lib/api/schemas';
 import { metresPerUnit } from '$lib/format/units';
 import { DisplayWorker } from '$lib/workers/display';
 import type {
@@ -14,6 +14,7 @@ import type {
 } from '$lib/workers/display-protocol';
 import { designBox, roundTo, shownMove, type Ray } from './bench-geometry';
 import { BoxesState } from './bench-boxes.svelte';
+import { KeepingState } from './bench-keeping.svelte';
 import { MoveState, type Preview } from './bench-move.svelte';
 
 export type Layer = FieldName | 'none';
@@ -66,6 +67,7 @@ export class BenchState {
 	target = $state.raw<{ place: Vec3 } | null>(null);
 
 	readonly boxes: BoxesState;
+	readonly keeping: KeepingState;
 	readonly move: MoveState;
 	readonly #worker = new DisplayWorker();
 	#loads = 0;
@@ -75,8 +77,10 @@ export class BenchState {
 
 	constructor(
 		readonly studyId: string,
-		readonly boxesStored: (list: Box[]) => void
+		readonly boxesStored: (list: Box[]) => void,
+		keepingStored: (kept: { keepOuts: KeepOut[]; locks: Lock[] }) => void
 	) {
+		this.keeping = new KeepingState(studyId, () => this.metresPerUnit, keepingStored);
 		this.boxes = new BoxesState(
 			studyId,
 			() => this.editable,
@@ -86,11 +90,14 @@ export class BenchState {
 			() => this.study,
 			() => this.shape,
 			this.boxes,
+			this.keeping,
 			(preview) => void this.#showMove(preview)
 		);
 	}
 
 	readonly editable = $derived(this.study?.role === 'engineer');
+	/** Reviewers draw keep-outs too. */
+	readonly mayDrawKeepOuts = $derived(this.study?.role === 'engineer' || this.study?.role === 'reviewer');
 	readonly unit = $derived(this.study?.lengthUnit ?? 'mm');
 	readonly metresPerUnit = $derived(metresPerUnit[this.unit]);
 	readonly map = $derived.by((): SensitivityMap | null => {
@@ -120,6 +127,7 @@ export class BenchState {
 		this.study = study;
 		this.shapes = shapes;
 		this.boxes.adopt(study.boxes);
+		this.keeping.adopt(study);
 		if (first) {
 			this.move.boxIds = study.boxes.map((b) => b.id);
 			this.boxes.select(study.boxes[0]?.id ?? null);

@@ -3,6 +3,7 @@ import { boxInverse, type Ray } from '$lib/state/bench-geometry';
 import type { DisplayMesh, Vec3 } from '$lib/workers/display-protocol';
 import { Cage, type BoxDrawing } from './cage';
 import { CameraRig } from './camera-rig';
+import { Keeping, type KeepingDrawing } from './keeping';
 import { readPalette, type Palette } from './palette';
 import { Surface } from './surface';
 
@@ -24,6 +25,9 @@ export class Viewport {
 	readonly #surface = new Surface();
 	readonly #host: HTMLElement;
 	readonly #drawn: () => void;
+	readonly #keeping = new Keeping();
+	#keepingDrawing: KeepingDrawing | null = null;
+	#mesh: DisplayMesh | null = null;
 	#cages: Cage[] = [];
 	#boxes: BoxDrawing[] = [];
 	#dim = 0;
@@ -44,7 +48,7 @@ export class Viewport {
 		this.rig = new CameraRig(host, () => this.invalidate());
 		this.#palette = readPalette(host);
 		this.#surface.setPalette(this.#palette);
-		this.#scene.add(this.#surface.mesh, this.#surface.ghost);
+		this.#scene.add(this.#surface.mesh, this.#surface.ghost, this.#keeping.group);
 		canvas.addEventListener('webglcontextrestored', () => this.invalidate());
 	}
 
@@ -67,10 +71,13 @@ export class Viewport {
 		this.#palette = readPalette(this.#host);
 		this.#surface.setPalette(this.#palette);
 		this.setBoxes(this.#boxes, this.#dim);
+		this.setKeeping(this.#keepingDrawing);
 	}
 
 	setMesh(mesh: DisplayMesh | null) {
 		this.#surface.setMesh(mesh);
+		this.#mesh = mesh;
+		this.setKeeping(this.#keepingDrawing);
 		if (mesh) this.rig.setBounds(mesh.bounds.min, mesh.bounds.max);
 		this.invalidate();
 	}
@@ -113,6 +120,14 @@ export class Viewport {
 		this.invalidate();
 	}
 
+	/** Keep-outs, symmetry plane, locked triangles; null: none. */
+	setKeeping(drawing: KeepingDrawing | null) {
+		this.#keepingDrawing = drawing;
+		if (drawing) this.#keeping.draw(drawing, this.#mesh, this.#palette);
+		else this.#keeping.clear();
+		this.invalidate();
+	}
+
 	setRing(centre: Vec3 | null, radius: number) {
 		this.#surface.setRing(centre, radius);
 		this.invalidate();
@@ -149,6 +164,7 @@ export class Viewport {
 		cancelAnimationFrame(this.#pending);
 		this.rig.dispose();
 		this.#surface.dispose();
+		this.#keeping.clear();
 		for (const cage of this.#cages) cage.dispose();
 		this.#renderer.dispose();
 		this.#renderer.domElement.remove();

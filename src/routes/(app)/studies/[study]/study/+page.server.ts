@@ -1,5 +1,6 @@
-import type { Role, Sense } from '$lib/api/schemas';
+import type { LengthUnit, Role, Sense } from '$lib/api/schemas';
 import { answerForm } from '$lib/api/server';
+import { metresPerUnit } from '$lib/format/units';
 import type { Actions } from './$types';
 
 export const actions: Actions = {
@@ -14,6 +15,18 @@ export const actions: Actions = {
 			};
 			fields.check();
 			await api.updateStudy({ id: event.params.study, body });
+		}),
+
+	symmetry: (event) =>
+		answerForm(event, 'symmetry', async (api, fields) => {
+			const axis = fields.text('axis');
+			const unit = metresPerUnit[fields.text('unit') as LengthUnit];
+			const at = axis === 'none' ? 0 : fields.number('at');
+			if (at === null) fields.refuse('at', 'needs a number');
+			fields.check();
+			const along = (x: number) => ['x', 'y', 'z'].map((name) => (name === axis ? x : 0)) as [number, number, number];
+			const symmetry = axis === 'none' ? null : { point: along(at! * unit), normal: along(1) };
+			await api.updateStudy({ id: event.params.study, body: { symmetry } });
 		}),
 
 	addObjective: (event) =>
