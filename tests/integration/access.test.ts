@@ -39,6 +39,12 @@ beforeAll(async () => {
 	shape = await scene.shape(shape.id);
 	moveRecipe = { boxIds: [await newBox()], step: 0.01, lockIds: [] };
 	keepOutMesh = await scene.importKeepOut(stl, 'rail.stl');
+	await ok(server, scene.token, 'POST', `/api/studies/${scene.study.id}/objectives`, {
+		name: 'Wetted area',
+		unit: '',
+		sense: 'hold',
+		rehearsal: { kind: 'wettedArea' }
+	});
 	tokens.engineer = scene.token;
 	tokens.viewer = (await scene.member('viewer')).token;
 	tokens.reviewer = (await scene.member('reviewer')).token;
@@ -104,6 +110,8 @@ async function valid(
 			await ok(server, scene.token, 'DELETE', `/api/boxes/${id}`);
 			return { id };
 		}
+		case 'rehearse':
+			return { body: {} };
 		case 'createKeepOut':
 			return { body: keepOut };
 		case 'replaceKeepOut':

@@ -146,6 +146,24 @@ describe('bounds of the displacement', () => {
 	});
 });
 
+describe('wall thickness', () => {
+	it('is kept along inward rays, and priced', async () => {
+		// Outward lowers on top and, more so, below: the sides come towards each other under a held volume.
+		const free = await scene.preview(shape.id, { ...recipe, constraints: [{ kind: 'volume', bound: 'hold' }] });
+		expect(free.constraints).toHaveLength(1);
+		const least = 0.2;
+		const kept = await scene.move(shape.id, {
+			...recipe,
+			constraints: [
+				{ kind: 'volume', bound: 'hold' },
+				{ kind: 'thickness', least }
+			]
+		});
+		const wall = kept.constraints.find((c) => c.kind === 'thickness')!;
+		expect(wall).toMatchObject({ index: 1, unit: 'm', limit: least, bound: 'atLeast', kept: true });
+	});
+});
+
 describe('locks', () => {
 	it('keep the bits of a patch, and rise over the blend distance', async () => {
 		// One solid for the half with x < 0, one for the other: the move is locked out of the first.

@@ -4,7 +4,15 @@ import type { Objective, OperatingPoint, ShapeSummary } from '$lib/api/schemas';
 import { bestRow, ledgerRows, lineage, readLast } from '$lib/state/ledger';
 import { ledgerCsv } from '$lib/state/ledger-csv';
 
-const drag: Objective = { id: 'drag', name: 'Drag', unit: 'N', sense: 'minimise', weight: 1, position: 0 };
+const drag: Objective = {
+	id: 'drag',
+	name: 'Drag',
+	unit: 'N',
+	sense: 'minimise',
+	weight: 1,
+	position: 0,
+	rehearsal: null
+};
 const point = (id: string, weight: number): OperatingPoint => ({
 	id,
 	name: id,
@@ -47,6 +55,7 @@ function shape(
 			value,
 			uncertainty,
 			note: '',
+			rehearsal: false,
 			createdAt: '2026-01-01T00:00:00.000Z',
 			createdBy: null
 		})),

@@ -403,6 +403,16 @@ export const operations = {
 		answer: s.jobAccepted
 	}),
 
+	rehearse: op({
+		method: 'POST',
+		path: '/api/shapes/{id}/rehearsals',
+		summary: 'Compute the rehearsal objectives of a shape: a result and a map each, marked as rehearsed',
+		access: 'engineer',
+		subject: 'shape',
+		body: s.rehearsalRequest,
+		status: 202,
+		answer: s.jobAccepted
+	}),
 	createResult: op({
 		method: 'POST',
 		path: '/api/shapes/{id}/results',

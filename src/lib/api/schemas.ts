@@ -92,7 +92,11 @@ export const objectiveCreate = z.object({
 	name,
 	unit: z.string().trim().max(24).describe('of the value the solver returns; "1" or empty for a coefficient'),
 	sense,
-	weight: finite.min(0).default(1)
+	weight: finite.min(0).default(1),
+	rehearsal: rehearsal
+		.nullable()
+		.default(null)
+		.describe('what is computed in place of a solver; its unit is then m² or m³')
 });
 export const objective = objectiveCreate.extend({ id, position: z.int(), weight: finite });
 export type Objective = z.infer<typeof objective>;
@@ -337,7 +341,8 @@ export const sensitivityMap = z.object({
 	outward: mapOutward,
 	report: mapReport,
 	createdAt: timestamp,
-	createdBy: person.nullable()
+	createdBy: person.nullable(),
+	rehearsal: z.boolean().describe('computed by a rehearsal objective: not a flow solution')
 });
 export type SensitivityMap = z.infer<typeof sensitivityMap>;
 
@@ -361,10 +366,15 @@ export const result = z.object({
 	value: finite,
 	uncertainty: finite.nullable(),
 	note: z.string(),
+	rehearsal: z.boolean().describe('computed by a rehearsal objective: not a flow solution'),
 	createdAt: timestamp,
 	createdBy: person.nullable()
 });
 export type Result = z.infer<typeof result>;
+
+export const rehearsalRequest = z.object({
+	objectiveIds: z.array(id).min(1).max(100).optional().describe('default: all rehearsal objectives of the study')
+});
 
 // --- moves -----------------------------------------------------------------------------------------------------------
 
@@ -620,7 +630,7 @@ export const problem = z.object({
 });
 export type Problem = z.infer<typeof problem>;
 
-export const jobKind = z.enum(['import-shape', 'import-map', 'import-keep-out', 'move']);
+export const jobKind = z.enum(['import-shape', 'import-map', 'import-keep-out', 'rehearse', 'move']);
 export const jobState = z.enum(['queued', 'running', 'done', 'failed', 'cancelled']);
 export const jobAccepted = z.object({ jobId: id });
 export const job = z.object({

@@ -1,5 +1,5 @@
 /** The words of senses, roles, states and map kinds, the same on every screen. */
-import type { Objective, Role, ShapeState } from '$lib/api/schemas';
+import type { Objective, Rehearsal, Role, ShapeState } from '$lib/api/schemas';
 
 export const senseWords: Record<Objective['sense'], string> = {
 	minimise: 'as low as possible',
@@ -33,3 +33,11 @@ export function initials(name: string): string {
 		.join('')
 		.toUpperCase();
 }
+
+/** What a rehearsal objective computes. */
+export const rehearsalWords: Record<Rehearsal['kind'], string> = {
+	wettedArea: 'Wetted area',
+	volume: 'Enclosed volume',
+	frontalArea: 'Frontal area',
+	impactDrag: 'Impact-pressure drag area'
+};

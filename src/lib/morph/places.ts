@@ -292,9 +292,14 @@ export class PlaceRounds {
 }
 
 /** The worst value of a set at some positions, and where. */
-export function worstPlace(set: PlaceSet, positions: Float64Array): { value: number; vertex: number } | null {
+export function worstPlace(
+	set: PlaceSet,
+	positions: Float64Array
+): { value: number; slack: number; vertex: number } | null {
 	const found = set.constraint.rows(positions, set.within);
 	let best = -1;
 	for (let k = 0; k < found.count; k++) if (best < 0 || found.slack[k] < found.slack[best]) best = k;
-	return best < 0 ? null : { value: set.sign * found.values[best], vertex: found.vertices[found.starts[best]] };
+	return best < 0
+		? null
+		: { value: set.sign * found.values[best], slack: found.slack[best], vertex: found.vertices[found.starts[best]] };
 }

@@ -54,7 +54,8 @@ export function reports(input: {
 		const { active, price, places } = prices?.sets[i] ?? none;
 		const was = kind === 'displacement' ? { value: 0 } : worstPlace(set, surface.positions);
 		const is = worstPlace(set, after);
-		const kept = is === null || keeps(is.value, bound, limit, PLACE_KEPT * extent);
+		// By the slack, which asks of a wall that was too thin before only that it becomes no thinner.
+		const kept = is === null || is.slack >= -PLACE_KEPT * extent;
 		const v = is?.vertex ?? 0;
 		const place: ConstraintReport['place'] = is && [after[3 * v], after[3 * v + 1], after[3 * v + 2]];
 		return {

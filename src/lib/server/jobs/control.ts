@@ -11,6 +11,7 @@ export const STAGES = [
 	'Matching the map to the surface',
 	'Storing the map',
 	'Storing the keep-out',
+	'Rehearsing',
 	'Preparing the move',
 	'Solving for the move',
 	'Checking the moved surface',

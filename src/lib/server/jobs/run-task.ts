@@ -10,6 +10,7 @@ import { importMapTask } from './tasks/import-map';
 import { importShapeTask } from './tasks/import-shape';
 import { NotOurs, type JobTask } from './tasks/job-task';
 import { commitTask, previewTask } from './tasks/move';
+import { rehearseTask } from './tasks/rehearse';
 import type { ClaimedJob } from '../repositories/jobs';
 
 /** Bytes of surfaces, gradients and prepared moves that a previewing thread keeps: some ten surfaces of half a million vertices. */
@@ -19,6 +20,7 @@ const JOBS: Record<ClaimedJob['kind'], (task: JobTask) => Promise<void>> = {
 	'import-shape': importShapeTask,
 	'import-map': importMapTask,
 	'import-keep-out': importKeepOutTask,
+	rehearse: rehearseTask,
 	move: commitTask
 };
 

@@ -1,6 +1,6 @@
 /** Queries about studies, their people, objectives and operating points. */
 import { QueryTypes } from 'sequelize';
-import type { LengthUnit, Plane, Role, Sense } from '$lib/api/schemas';
+import type { LengthUnit, Plane, Rehearsal, Role, Sense } from '$lib/api/schemas';
 import { database } from '../db/client';
 import { UserModel } from '../db/models/people';
 import { ObjectiveModel, OperatingPointModel, StudyMemberModel, StudyModel } from '../db/models/studies';
@@ -123,7 +123,15 @@ export const listObjectives = (studyId: string, tx?: Tx): Promise<ObjectiveRow[]
 	ObjectiveModel.findAll({ where: { studyId }, order: ['position'], transaction: tx });
 
 export const insertObjective = (
-	values: { studyId: string; position: number; name: string; unit: string; sense: Sense; weight: number },
+	values: {
+		studyId: string;
+		position: number;
+		name: string;
+		unit: string;
+		sense: Sense;
+		weight: number;
+		rehearsal: Rehearsal | null;
+	},
 	tx: Tx
 ): Promise<ObjectiveRow> => ObjectiveModel.create(values, { transaction: tx });
 

@@ -2,6 +2,7 @@
 import {
 	embed,
 	prepareKeepOut,
+	prepareThickness,
 	toMetres,
 	type KeepOutGeometry,
 	type MoveConstraint,
@@ -108,7 +109,16 @@ async function engineConstraint(
 			);
 			return { kind: 'keepOut', label: keepOut.name, limit, source };
 		}
-		case 'thickness':
+		case 'thickness': {
+			const { kind, least } = request;
+			const bytes = 16 * parent.mesh.triangles.length;
+			const source = await cache.kept(
+				`thickness ${parent.id} ${least}`,
+				() => prepareThickness(parent.surface, least),
+				bytes
+			);
+			return { kind, label: 'wall thickness', limit: least, source, vertices: meant(request, recipe, parent) };
+		}
 		case 'radius':
 			return null;
 	}

@@ -95,7 +95,7 @@ function refuseUnsupported(recipe: Recipe): void {
 	}
 	const missing = recipe.constraints.findIndex(MISSING);
 	if (missing >= 0) {
-		const detail = 'Moves that keep a thickness, a radius or the volume of a part are not available yet.';
+		const detail = 'Moves that keep a radius or the volume of a part are not available yet.';
 		throw new AppError('unsupported', detail, {
 			errors: [{ pointer: `/constraints/${missing}`, detail }],
 			mend: 'Leave the constraint out.'
@@ -113,7 +113,7 @@ function refuseUnsupported(recipe: Recipe): void {
 
 /** Constraints that the engine has no kernel for yet. */
 const MISSING = ({ kind, ...constraint }: ConstraintRequest) =>
-	kind === 'thickness' || kind === 'radius' || (kind === 'volume' && 'patches' in constraint);
+	kind === 'radius' || (kind === 'volume' && 'patches' in constraint);
 
 const PLACE_KINDS: ConstraintRequest['kind'][] = ['displacement', 'keepOut', 'thickness'];
 

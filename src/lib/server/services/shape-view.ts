@@ -13,6 +13,7 @@ export function resultView(row: ResultRow): Result {
 		value: row.value,
 		uncertainty: row.uncertainty,
 		note: row.note,
+		rehearsal: row.rehearsal,
 		createdAt: row.createdAt.toISOString(),
 		createdBy: person(row.creator)
 	};
@@ -29,6 +30,7 @@ export function mapView(row: MapRow): SensitivityMap {
 		location: row.location,
 		outward: row.outward,
 		report: row.report,
+		rehearsal: row.rehearsal,
 		createdAt: row.createdAt.toISOString(),
 		createdBy: person(row.creator)
 	};

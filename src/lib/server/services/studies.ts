@@ -11,6 +11,14 @@ import { boxAnswer } from './boxes';
 import { keepOutAnswer } from './keep-outs';
 import { lockAnswer } from './locks';
 
+/** Areas and drag areas in m², volumes in m³. */
+const REHEARSAL_UNITS: Record<wire.Rehearsal['kind'], string> = {
+	wettedArea: 'm²',
+	volume: 'm³',
+	frontalArea: 'm²',
+	impactDrag: 'm²'
+};
+
 const FIRST_OPERATING_POINT = 'Design point';
 
 function summaryAnswer(row: repository.StudySummaryRow): wire.StudySummary {
@@ -28,8 +36,8 @@ function summaryAnswer(row: repository.StudySummaryRow): wire.StudySummary {
 }
 
 function objectiveAnswer(row: repository.ObjectiveRow): wire.Objective {
-	const { id, name, unit, sense, weight, position } = row;
-	return { id, name, unit, sense, weight, position };
+	const { id, name, unit, sense, weight, position, rehearsal } = row;
+	return { id, name, unit, sense, weight, position, rehearsal: rehearsal ?? null };
 }
 
 function operatingPointAnswer(row: repository.OperatingPointRow): wire.OperatingPoint {
@@ -109,13 +117,14 @@ export async function createObjective(
 	body: z.output<typeof wire.objectiveCreate>
 ): Promise<wire.Objective> {
 	const { studyId } = access;
-	const { name, unit, sense, weight } = body;
+	const { name, sense, weight, rehearsal } = body;
+	const unit = rehearsal ? REHEARSAL_UNITS[rehearsal.kind] : body.unit;
 	return inTransaction(async (tx) => {
 		const study = await repository.lockStudy(studyId, tx);
 		const others = await repository.listObjectives(studyId, tx);
 		refuseTaken(name, others, 'objective');
 		const position = nextPosition(others);
-		const row = await repository.insertObjective({ studyId, position, name, unit, sense, weight }, tx);
+		const row = await repository.insertObjective({ studyId, position, name, unit, sense, weight, rehearsal }, tx);
 		await repository.touchStudy(study, tx);
 		await recordEvent(tx, access, { action: 'objective.created', studyId, subjectId: row.id, detail: body });
 		return objectiveAnswer(row);

@@ -58,7 +58,8 @@ export class MapModel extends Model<InferAttributes<MapModel>, InferCreationAttr
 	declare kind: SensitivityMap['kind'];
 	declare location: SensitivityMap['location'];
 	declare outward: SensitivityMap['outward'];
-	declare originalId: string;
+	declare originalId: string | null;
+	declare rehearsal: CreationOptional<boolean>;
 	declare valuesId: string;
 	declare report: z.infer<typeof mapReport>;
 	declare createdBy: string | null;
@@ -88,6 +89,7 @@ export class ResultModel extends Model<InferAttributes<ResultModel>, InferCreati
 	declare value: number;
 	declare uncertainty: number | null;
 	declare note: CreationOptional<string>;
+	declare rehearsal: CreationOptional<boolean>;
 	declare createdBy: string | null;
 	declare createdAt: CreationOptional<Date>;
 	declare creator?: UserModel | null;
@@ -156,7 +158,8 @@ export function initShapes(sequelize: Sequelize) {
 			kind: text(),
 			location: text(),
 			outward: text(),
-			originalId: reference(),
+			originalId: DataTypes.UUID,
+			rehearsal: { type: DataTypes.BOOLEAN, allowNull: false, defaultValue: false },
 			valuesId: reference(),
 			report: json(),
 			createdBy: DataTypes.UUID,
@@ -187,6 +190,7 @@ export function initShapes(sequelize: Sequelize) {
 			value: number(),
 			uncertainty: DataTypes.DOUBLE,
 			note: { ...text(), defaultValue: '' },
+			rehearsal: { type: DataTypes.BOOLEAN, allowNull: false, defaultValue: false },
 			createdBy: DataTypes.UUID,
 			createdAt: createdAt()
 		},

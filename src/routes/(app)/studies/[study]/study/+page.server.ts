@@ -1,4 +1,4 @@
-import type { LengthUnit, Role, Sense } from '$lib/api/schemas';
+import type { LengthUnit, Rehearsal, Role, Sense } from '$lib/api/schemas';
 import { answerForm } from '$lib/api/server';
 import { metresPerUnit } from '$lib/format/units';
 import type { Actions } from './$types';
@@ -36,6 +36,31 @@ export const actions: Actions = {
 				unit: fields.text('unit'),
 				sense: fields.text('sense') as Sense,
 				weight: fields.number('weight') ?? 1
+			};
+			fields.check();
+			await api.createObjective({ id: event.params.study, body });
+		}),
+
+	addRehearsal: (event) =>
+		answerForm(event, 'rehearsal-new', async (api, fields) => {
+			const kind = fields.text('kind') as Rehearsal['kind'];
+			const [sign, axis] = fields.text('flow');
+			const direction = ['x', 'y', 'z'].map((a) => (a === axis ? (sign === '-' ? -1 : 1) : 0)) as [
+				number,
+				number,
+				number
+			];
+			const stagnation = fields.number('stagnation') ?? undefined;
+			const body = {
+				name: fields.text('name'),
+				unit: '',
+				sense: fields.text('sense') as Sense,
+				weight: fields.number('weight') ?? 1,
+				rehearsal: {
+					kind,
+					...(kind === 'frontalArea' || kind === 'impactDrag' ? { direction } : {}),
+					...(kind === 'impactDrag' ? { stagnation } : {})
+				}
 			};
 			fields.check();
 			await api.createObjective({ id: event.params.study, body });
