@@ -21,6 +21,7 @@ export { edgeTable, type EdgeTable } from './half-edges';
 export { type PlaceConstraint, type PlaceRows, type PlaceSource } from './place-rows';
 export { prepareKeepOut, type KeepOutGeometry, type KeepOutSide, type PreparedKeepOut } from './keep-out';
 export { lockWeights, type SurfaceLock } from './locks';
+export { patchVolume, type PartSurface } from './part-volume';
 export { CurvatureProbe, smallestRadii, type Curvatures, type RadiusPlace } from './curvature';
 export { prepareThickness, type PreparedThickness, type ThicknessOptions } from './thickness';
 export { rehearse, type Rehearsal, type RehearsalKind, type RehearsalSpec } from './rehearsal';
