@@ -216,7 +216,7 @@ describe('whole descents with rehearsal objectives', () => {
 	it('a keep-out is touched and never crossed, cycle by cycle as stored', () => {
 		// Millimetres in float32, as a file has them; a ceiling over a body that grows.
 		const mesh = ellipsoid(4, [1.2, 0.7, 0.5]);
-		let stored = Float32Array.from(mesh.positions, (x) => 1000 * x);
+		let stored: Float32Array = Float32Array.from(mesh.positions, (x) => 1000 * x);
 		const clearance = 0.004;
 		const source = prepareKeepOut({ kind: 'halfSpace', point: [0, 0, 0.54], normal: [0, 0, -1] }, 'outside', clearance);
 		const box = makeBox({
