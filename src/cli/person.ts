@@ -5,7 +5,8 @@
 import { randomBytes } from 'node:crypto';
 import { readFileSync } from 'node:fs';
 import { parseArgs } from 'node:util';
-import { role as studyRole, userCreate } from '$lib/api/schemas';
+import { role as studyRole } from '$lib/api/schemas/common';
+import { userCreate } from '$lib/api/schemas/people';
 import { closeDatabase } from '$lib/server/db/client';
 import { AppError } from '$lib/server/errors';
 import { placeMember } from '$lib/server/services/members';

@@ -2,7 +2,9 @@
 import { readFileSync } from 'node:fs';
 import AxeBuilder from '@axe-core/playwright';
 import type { Download, Locator, Page } from '@playwright/test';
-import type { Box, Shape, ShapeSummary, Study } from '../../src/lib/api/schemas';
+import type { Box } from '../../src/lib/api/schemas/drawn';
+import type { Shape, ShapeSummary } from '../../src/lib/api/schemas/shapes';
+import type { Study } from '../../src/lib/api/schemas/studies';
 import { readSoup, soupVolume, type Soup } from '../factories/stl';
 import { test as base, expect } from '../harness/e2e';
 

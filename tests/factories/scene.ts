@@ -1,20 +1,13 @@
 /** A study with its people on a server under test, and the calls that most tests begin with. */
 import { expect } from 'vitest';
 import type { z } from 'zod';
-import type {
-	Box,
-	BoxCreate,
-	Job,
-	mapImported,
-	MoveAnswer,
-	Objective,
-	Problem,
-	RecipeInput,
-	Result,
-	Role,
-	Shape,
-	Study
-} from '$lib/api/schemas';
+import type { Problem, Role } from '$lib/api/schemas/common';
+import type { Box, BoxCreate } from '$lib/api/schemas/drawn';
+import type { Job, mapImported } from '$lib/api/schemas/jobs';
+import type { Result } from '$lib/api/schemas/maps';
+import type { MoveAnswer, RecipeInput } from '$lib/api/schemas/moves';
+import type { Shape } from '$lib/api/schemas/shapes';
+import type { Objective, Study } from '$lib/api/schemas/studies';
 import type { TestServer, TestUser } from '../harness/server';
 import { readSoup, type Soup } from './stl';
 

@@ -1,7 +1,8 @@
 /** Every operation of the contract, called by every kind of caller. A row that is added to the contract is walked by itself. */
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
-import { operations, type Access, type Operation, type OperationName } from '$lib/api/contract';
-import type { Shape } from '$lib/api/schemas';
+import { operations, type OperationName } from '$lib/api/contract';
+import type { Access, Operation } from '$lib/api/contract/operation';
+import type { Shape } from '$lib/api/schemas/shapes';
 import { newScene, ok, sendFile, type Scene } from '../factories/scene';
 import { soupOf, writeBinarySoup } from '../factories/stl';
 import { csvOf, ellipsoid } from '../factories/surfaces';

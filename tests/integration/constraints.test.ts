@@ -1,6 +1,9 @@
 /** What a move keeps clear of and leaves alone: keep-outs, locks, bounds, symmetry, points moved by hand. */
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
-import type { Box, KeepOut, Lock, RecipeInput, Shape, Study } from '$lib/api/schemas';
+import type { Box, KeepOut, Lock } from '$lib/api/schemas/drawn';
+import type { RecipeInput } from '$lib/api/schemas/moves';
+import type { Shape } from '$lib/api/schemas/shapes';
+import type { Study } from '$lib/api/schemas/studies';
 import { call, newScene, ok, problemIn, upload, type Scene } from '../factories/scene';
 import { soupOf, writeAsciiSoup, writeBinarySoup, type Soup } from '../factories/stl';
 import { csvOf, ellipsoid } from '../factories/surfaces';

@@ -1,6 +1,10 @@
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
-import * as schemas from '$lib/api/schemas';
-import type { Job, RecipeInput, Shape } from '$lib/api/schemas';
+import * as commonWire from '$lib/api/schemas/common';
+import * as jobsWire from '$lib/api/schemas/jobs';
+import type * as shapesWire from '$lib/api/schemas/shapes';
+import type { Job } from '$lib/api/schemas/jobs';
+import type { RecipeInput } from '$lib/api/schemas/moves';
+import type { Shape } from '$lib/api/schemas/shapes';
 import { call, newScene, ok, problemIn, sendFile, storedRows, type Scene } from '../factories/scene';
 import { soupOf, soupVolume, writeBinarySoup } from '../factories/stl';
 import { csvOf, ellipsoid } from '../factories/surfaces';
@@ -45,7 +49,7 @@ describe('GET /api/jobs/{id}/events', () => {
 		expect(response.status).toBe(200);
 		expect(response.headers.get('content-type')).toMatch(/^text\/event-stream/);
 		const events = await eventsOf(response);
-		for (const event of events) expect(schemas.job.parse(event)).toEqual(event);
+		for (const event of events) expect(jobsWire.job.parse(event)).toEqual(event);
 		expect(events.at(-1)).toMatchObject({ id: body.jobId, kind: 'import-shape', state: 'done', progress: 1 });
 		const shares = events.map(({ progress }) => progress);
 		expect([...shares].sort((a, b) => a - b)).toEqual(shares);
@@ -137,7 +141,7 @@ describe('a server that is killed', () => {
 		await server.killAndRestart();
 		const job = await server.job<Job>(jobId, scene.token, 100);
 		expect(['done', 'failed']).toContain(job.state);
-		const shapes = await ok<schemas.ShapeSummary[]>(
+		const shapes = await ok<shapesWire.ShapeSummary[]>(
 			server,
 			scene.token,
 			'GET',
@@ -151,7 +155,7 @@ describe('a server that is killed', () => {
 			expect(Math.abs(soupVolume(child) / soupVolume(parent) - 1)).toBeLessThan(1e-9);
 			expect(job.result!.shapeId).toBe(shapes[1].id);
 		} else {
-			expect(schemas.problem.parse(job.error).detail).toMatch(/./);
+			expect(commonWire.problem.parse(job.error).detail).toMatch(/./);
 		}
 		// Made again, it is the same shape: running a recipe twice changes nothing.
 		const again = await scene.move(shape.id, recipe);

@@ -1,6 +1,9 @@
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
-import * as schemas from '$lib/api/schemas';
-import type { Job, Problem, Shape, Study } from '$lib/api/schemas';
+import * as wire from '$lib/api/schemas/common';
+import type { Problem } from '$lib/api/schemas/common';
+import type { Job } from '$lib/api/schemas/jobs';
+import type { Shape } from '$lib/api/schemas/shapes';
+import type { Study } from '$lib/api/schemas/studies';
 import { call, newScene, ok, problemIn, sendFile, storedRows, type Scene } from '../factories/scene';
 import { soupArea, soupOf, weldSoup, writeBinarySoup, type Soup } from '../factories/stl';
 import { csvOf, ellipsoid } from '../factories/surfaces';
@@ -46,7 +49,7 @@ async function refused(csv: string, query: Record<string, string> = {}): Promise
 	if (accepted.status === 202) {
 		const job = await server.job<Job>(accepted.body.jobId, scene.token);
 		expect(job.state).toBe('failed');
-		problem = schemas.problem.parse(job.error);
+		problem = wire.problem.parse(job.error);
 	} else {
 		problem = problemIn(accepted, accepted.status);
 	}

@@ -1,6 +1,9 @@
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
-import * as schemas from '$lib/api/schemas';
-import type { Box, Job, RecipeInput, Shape } from '$lib/api/schemas';
+import * as wire from '$lib/api/schemas/shapes';
+import type { Box } from '$lib/api/schemas/drawn';
+import type { Job } from '$lib/api/schemas/jobs';
+import type { RecipeInput } from '$lib/api/schemas/moves';
+import type { Shape } from '$lib/api/schemas/shapes';
 import { call, newScene, ok, problemIn, storedRows, type Scene } from '../factories/scene';
 import { soupOf, soupVolume, writeAsciiSoup, writeBinarySoup, type Soup } from '../factories/stl';
 import { csvOf, ellipsoid, predictedChange, sortedAlongX } from '../factories/surfaces';
@@ -178,7 +181,7 @@ describe('POST /api/shapes/{id}/moves', () => {
 		expect(first.predicted).toEqual(preview.predicted);
 		expect(first.maxDisplacement).toBe(preview.maxDisplacement);
 		const child = await scene.shape(first.shapeId);
-		expect(schemas.shape.parse(child)).toEqual(child);
+		expect(wire.shape.parse(child)).toEqual(child);
 		expect(child).toMatchObject({
 			number: 1,
 			parentId: shape.id,
@@ -216,7 +219,7 @@ describe('POST /api/shapes/{id}/moves', () => {
 		expect(Math.abs(soupVolume(again) / soupVolume(moved) - 1)).toBeLessThan(1e-9);
 		expect(Math.abs(second.predicted[0].change! / predictedChange(moved, again, 1, later) - 1)).toBeLessThan(1e-5);
 
-		const list = await ok<schemas.ShapeSummary[]>(server, scene.token, 'GET', `/api/studies/${scene.study.id}/shapes`);
+		const list = await ok<wire.ShapeSummary[]>(server, scene.token, 'GET', `/api/studies/${scene.study.id}/shapes`);
 		expect(list.map(({ number, parentId }) => [number, parentId])).toEqual([
 			[0, null],
 			[1, shape.id],

@@ -1,6 +1,7 @@
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
-import * as schemas from '$lib/api/schemas';
-import type { Study, Token, User } from '$lib/api/schemas';
+import * as wire from '$lib/api/schemas/people';
+import type { Token, User } from '$lib/api/schemas/people';
+import type { Study } from '$lib/api/schemas/studies';
 import { call, newScene, ok, problemIn } from '../factories/scene';
 import { startServer, type TestServer, type TestUser } from '../harness/server';
 
@@ -18,7 +19,7 @@ describe('API tokens', () => {
 	it('are made, shown once, listed by prefix, and stop working when revoked', async () => {
 		const person = await server.addUser();
 		const made = await ok<Made>(server, person.token, 'POST', '/api/tokens', { name: 'Solver pipeline' });
-		expect(schemas.tokenCreated.parse(made)).toEqual(made);
+		expect(wire.tokenCreated.parse(made)).toEqual(made);
 		expect(made.token.startsWith(made.prefix)).toBe(true);
 		expect(made.prefix.length).toBeLessThan(made.token.length / 2);
 		await ok(server, made.token, 'GET', '/api/studies');

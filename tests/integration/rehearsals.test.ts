@@ -1,6 +1,8 @@
 /** Rehearsal objectives: a whole cycle with no solver. */
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
-import type { Job, Objective, Shape } from '$lib/api/schemas';
+import type { Job } from '$lib/api/schemas/jobs';
+import type { Shape } from '$lib/api/schemas/shapes';
+import type { Objective } from '$lib/api/schemas/studies';
 import { call, newScene, ok, problemIn, type Scene } from '../factories/scene';
 import { soupOf, writeBinarySoup } from '../factories/stl';
 import { ellipsoid } from '../factories/surfaces';

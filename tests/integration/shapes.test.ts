@@ -1,8 +1,11 @@
 import { createHash } from 'node:crypto';
 import { request } from 'node:http';
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
-import * as schemas from '$lib/api/schemas';
-import type { Job, Problem, Shape } from '$lib/api/schemas';
+import * as commonWire from '$lib/api/schemas/common';
+import * as shapesWire from '$lib/api/schemas/shapes';
+import type { Problem } from '$lib/api/schemas/common';
+import type { Job } from '$lib/api/schemas/jobs';
+import type { Shape } from '$lib/api/schemas/shapes';
 import { call, newScene, ok, problemIn, sendFile, storedRows, upload, type Scene } from '../factories/scene';
 import { readSoup, soupArea, soupOf, soupVolume, weldSoup, writeAsciiSoup, writeBinarySoup } from '../factories/stl';
 import { ellipsoid } from '../factories/surfaces';
@@ -33,7 +36,7 @@ async function refused(file: Uint8Array<ArrayBuffer> | string, filename = 'part.
 		const job = await server.job<Job>(accepted.body.jobId, scene.token);
 		expect(job.state).toBe('failed');
 		expect(job.result).toBeUndefined();
-		problem = schemas.problem.parse(job.error);
+		problem = commonWire.problem.parse(job.error);
 	} else {
 		problem = problemIn(accepted, accepted.status);
 	}
@@ -44,7 +47,7 @@ async function refused(file: Uint8Array<ArrayBuffer> | string, filename = 'part.
 describe('POST /api/studies/{id}/shapes', () => {
 	it('imports a binary STL and says what it holds, in SI', async () => {
 		const shape = await scene.importShape(writeBinarySoup(soup), 'ellipsoid.stl');
-		expect(schemas.shape.parse(shape)).toEqual(shape);
+		expect(shapesWire.shape.parse(shape)).toEqual(shape);
 		expect(shape).toMatchObject({
 			studyId: scene.study.id,
 			number: 0,

@@ -1,6 +1,10 @@
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
-import * as schemas from '$lib/api/schemas';
-import type { Box, Member, Objective, OperatingPoint, Study, StudySummary } from '$lib/api/schemas';
+import type * as commonWire from '$lib/api/schemas/common';
+import * as drawnWire from '$lib/api/schemas/drawn';
+import * as studiesWire from '$lib/api/schemas/studies';
+import type { Box } from '$lib/api/schemas/drawn';
+import type { Member } from '$lib/api/schemas/people';
+import type { Objective, OperatingPoint, Study, StudySummary } from '$lib/api/schemas/studies';
 import { call, newScene, ok, problemIn, type Scene } from '../factories/scene';
 import { startServer, type TestServer } from '../harness/server';
 
@@ -13,7 +17,7 @@ beforeAll(async () => {
 afterAll(() => server.stop());
 
 const NOWHERE = '00000000-0000-4000-8000-000000000000';
-const pointers = (problem: schemas.Problem) => problem.errors?.map((error) => error.pointer).sort();
+const pointers = (problem: commonWire.Problem) => problem.errors?.map((error) => error.pointer).sort();
 
 describe('GET /api/health and /api/openapi.json', () => {
 	it('answers without a session', async () => {
@@ -43,7 +47,7 @@ describe('POST /api/studies', () => {
 			density: 1.225,
 			speed: 50
 		});
-		expect(schemas.study.parse(study)).toEqual(study);
+		expect(studiesWire.study.parse(study)).toEqual(study);
 		expect(study).toMatchObject({
 			name: 'Front wing',
 			lengthUnit: 'mm',
@@ -208,7 +212,7 @@ describe('design boxes', () => {
 			halfSize,
 			lattice: [7, 5, 5]
 		});
-		expect(schemas.box.parse(box)).toEqual(box);
+		expect(drawnWire.box.parse(box)).toEqual(box);
 		expect(box).toMatchObject({
 			basis: 'bernstein',
 			rotation: [0, 0, 0, 1],

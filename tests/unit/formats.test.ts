@@ -12,7 +12,7 @@ import {
 	volume
 } from '$lib/format/units';
 import { initials } from '$lib/format/words';
-import type { LengthUnit } from '$lib/api/schemas';
+import type { LengthUnit } from '$lib/api/schemas/common';
 
 /** Spaces that hold number and unit together, as plain ones. */
 const text = (s: string) => s.replaceAll('\u00a0', ' ');

@@ -1,6 +1,7 @@
 /** What the Ledger makes of shapes and results. */
 import { describe, expect, it } from 'vitest';
-import type { Objective, OperatingPoint, ShapeSummary } from '$lib/api/schemas';
+import type { ShapeSummary } from '$lib/api/schemas/shapes';
+import type { Objective, OperatingPoint } from '$lib/api/schemas/studies';
 import { bestRow, ledgerRows, lineage, readLast } from '$lib/state/ledger';
 import { ledgerCsv } from '$lib/state/ledger-csv';
 

@@ -3,8 +3,9 @@
  * schemas give. Works in the browser and, given SvelteKit's `fetch`, while a page is rendered on the server.
  */
 import type { z } from 'zod';
-import { operations, type Operation, type OperationName } from './contract';
-import type { Problem } from './schemas';
+import { operations, type OperationName } from './contract';
+import type { Operation } from './contract/operation';
+import type { Problem } from './schemas/common';
 
 type Operations = typeof operations;
 type JsonName = {

@@ -1,5 +1,6 @@
 /** Lengths, areas and volumes are metres everywhere inside; here they get the unit that people read. */
-import type { LengthUnit, Objective } from '$lib/api/schemas';
+import type { LengthUnit } from '$lib/api/schemas/common';
+import type { Objective } from '$lib/api/schemas/studies';
 import { decimalsFor, fixed, NBSP, NOTHING, parseNumber, PLUS_MINUS, signed } from './numbers';
 
 export const metresPerUnit: Record<LengthUnit, number> = { m: 1, cm: 0.01, mm: 0.001, in: 0.0254 };

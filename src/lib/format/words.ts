@@ -1,5 +1,7 @@
 /** The words of senses, roles, states and map kinds, the same on every screen. */
-import type { Objective, Rehearsal, Role, ShapeState } from '$lib/api/schemas';
+import type { Role } from '$lib/api/schemas/common';
+import type { ShapeState } from '$lib/api/schemas/shapes';
+import type { Objective, Rehearsal } from '$lib/api/schemas/studies';
 
 export const senseWords: Record<Objective['sense'], string> = {
 	minimise: 'as low as possible',

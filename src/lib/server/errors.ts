@@ -1,6 +1,6 @@
 /** Every reason for which the server refuses, one table to HTTP, and the RFC 9457 answer that requests and jobs share. */
 import { randomUUID } from 'node:crypto';
-import type { Problem } from '$lib/api/schemas';
+import type { Problem } from '$lib/api/schemas/common';
 import type { MorphError, MorphErrorCode, MorphPlace } from '$lib/morph';
 import { log } from './log';
 

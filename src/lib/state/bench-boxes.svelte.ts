@@ -1,5 +1,5 @@
 import { api, asProblem, type ApiProblem } from '$lib/api/client';
-import type { Box, BoxCreate } from '$lib/api/schemas';
+import type { Box, BoxCreate } from '$lib/api/schemas/drawn';
 import { toAngles } from './bench-geometry';
 
 export type SaveState = 'saved' | 'waiting' | 'saving' | 'failed';

@@ -1,6 +1,9 @@
 /** Geometry of design boxes on the page: axes, faces, dragging, typed angles. Metres, radians unless said; no drawing. */
 import { Euler, MathUtils, Matrix4, Quaternion, Vector3 } from 'three';
-import type { Box, BoxCreate, Held, Lock, MoveAnswer, Plane, Shape } from '$lib/api/schemas';
+import type { Plane } from '$lib/api/schemas/common';
+import type { Box, BoxCreate, Held, Lock } from '$lib/api/schemas/drawn';
+import type { MoveAnswer } from '$lib/api/schemas/moves';
+import type { Shape } from '$lib/api/schemas/shapes';
 import { controlPoints, mirrorBox, type DesignBox } from '$lib/morph';
 import type { DisplayInput, Vec3 } from '$lib/workers/display-protocol';
 

@@ -1,5 +1,6 @@
 import { api, apiPath, asProblem, problemFromText, type ApiProblem } from '$lib/api/client';
-import type { KeepOut, KeepOutDefinition, Lock, LockCreate, Study } from '$lib/api/schemas';
+import type { KeepOut, KeepOutDefinition, Lock, LockCreate } from '$lib/api/schemas/drawn';
+import type { Study } from '$lib/api/schemas/studies';
 import type { Vec3 } from '$lib/workers/display-protocol';
 
 /** An uploaded keep-out's surface, metres. */

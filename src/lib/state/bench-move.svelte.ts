@@ -1,5 +1,8 @@
 import { api, asProblem, type ApiProblem } from '$lib/api/client';
-import type { Box, ConstraintRequest, MoveAnswer, RecipeInput, Shape, Study } from '$lib/api/schemas';
+import type { Box } from '$lib/api/schemas/drawn';
+import type { ConstraintRequest, MoveAnswer, RecipeInput } from '$lib/api/schemas/moves';
+import type { Shape } from '$lib/api/schemas/shapes';
+import type { Study } from '$lib/api/schemas/studies';
 import type { BoxesState } from './bench-boxes.svelte';
 import { bodyOf } from './bench-boxes.svelte';
 import type { KeepingState } from './bench-keeping.svelte';

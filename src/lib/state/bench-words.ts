@@ -1,5 +1,6 @@
 /** What the Bench says about boxes, fields and checks. */
-import type { Box, Held, Objective } from '$lib/api/schemas';
+import type { Box, Held } from '$lib/api/schemas/drawn';
+import type { Objective } from '$lib/api/schemas/studies';
 import { axisOf, boxAxis, faceNames, sideOf, type FaceName, type Placement } from './bench-geometry';
 
 /** Planes of control points held at a face, as the surface feels it. */

@@ -1,6 +1,9 @@
 import { getContext, setContext } from 'svelte';
 import { apiPath, asProblem, problemFromText, type ApiProblem } from '$lib/api/client';
-import type { Box, BoxCreate, KeepOut, Lock, SensitivityMap, Shape, ShapeSummary, Study } from '$lib/api/schemas';
+import type { Box, BoxCreate, KeepOut, Lock } from '$lib/api/schemas/drawn';
+import type { SensitivityMap } from '$lib/api/schemas/maps';
+import type { Shape, ShapeSummary } from '$lib/api/schemas/shapes';
+import type { Study } from '$lib/api/schemas/studies';
 import { metresPerUnit } from '$lib/format/units';
 import { DisplayWorker } from '$lib/workers/display';
 import type {

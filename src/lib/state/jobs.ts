@@ -1,5 +1,5 @@
 import { api, apiPath, ApiProblem } from '$lib/api/client';
-import type { Job } from '$lib/api/schemas';
+import type { Job } from '$lib/api/schemas/jobs';
 
 /** Thrown when a job was cancelled, by whomever. */
 export class JobCancelled extends Error {

@@ -1,4 +1,4 @@
-import type { Objective, OperatingPoint } from '$lib/api/schemas';
+import type { Objective, OperatingPoint } from '$lib/api/schemas/studies';
 import type { LedgerRow } from './ledger';
 
 /** The Ledger's table as CSV (RFC 4180): plain numbers with a decimal point, units in the head, lengths in mm. */

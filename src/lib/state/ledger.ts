@@ -1,5 +1,6 @@
 /** The study's history for one objective at one operating point: what was predicted, what was found, and what it means. */
-import type { Objective, OperatingPoint, ShapeSummary } from '$lib/api/schemas';
+import type { ShapeSummary } from '$lib/api/schemas/shapes';
+import type { Objective, OperatingPoint } from '$lib/api/schemas/studies';
 import { fixed } from '$lib/format/numbers';
 import { length, objectiveChange } from '$lib/format/units';
 import { shapeNumber } from '$lib/format/words';

@@ -1,5 +1,5 @@
 import { apiPath } from '$lib/api/client';
-import type { ShapeSummary } from '$lib/api/schemas';
+import type { ShapeSummary } from '$lib/api/schemas/shapes';
 
 /** Addresses of screens and files, in one place. */
 export const ledgerHref = (studyId: string) => `/studies/${studyId}`;

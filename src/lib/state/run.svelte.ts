@@ -1,5 +1,5 @@
 import { asProblem, type ApiProblem } from '$lib/api/client';
-import type { Job } from '$lib/api/schemas';
+import type { Job } from '$lib/api/schemas/jobs';
 import { JobCancelled, watchJob } from './jobs';
 import { sendFile } from './upload';
 

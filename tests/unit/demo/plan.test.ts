@@ -1,5 +1,7 @@
 import { describe, expect, it } from 'vitest';
-import { boxCreate, objectiveCreate, operatingPointCreate, studyCreate, userCreate } from '$lib/api/schemas';
+import { boxCreate } from '$lib/api/schemas/drawn';
+import { userCreate } from '$lib/api/schemas/people';
+import { objectiveCreate, operatingPointCreate, studyCreate } from '$lib/api/schemas/studies';
 import { readStl } from '$lib/morph';
 import { demoPlan, foundShare } from '$lib/server/demo/plan';
 import { readSoup } from '../../factories/stl';

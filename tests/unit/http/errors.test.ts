@@ -1,5 +1,5 @@
 import { describe, expect, it } from 'vitest';
-import { problem as problemSchema } from '$lib/api/schemas';
+import { problem as problemSchema } from '$lib/api/schemas/common';
 import { MorphError } from '$lib/morph';
 import { AppError, errorCodes, statusOf, toProblem } from '$lib/server/errors';
 import { problemResponse } from '$lib/server/http/problem';

@@ -1,5 +1,8 @@
 import { describe, expect, it } from 'vitest';
-import { boxCreate, mapImportQuery, recipeRequest, studyCreate } from '$lib/api/schemas';
+import { boxCreate } from '$lib/api/schemas/drawn';
+import { mapImportQuery } from '$lib/api/schemas/maps';
+import { recipeRequest } from '$lib/api/schemas/moves';
+import { studyCreate } from '$lib/api/schemas/studies';
 import { AppError } from '$lib/server/errors';
 import { JSON_LIMIT, isUuid, readJson, validateBody, validateQuery } from '$lib/server/http/input';
 

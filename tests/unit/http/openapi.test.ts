@@ -1,7 +1,8 @@
 import { readdirSync, readFileSync } from 'node:fs';
 import { join, relative } from 'node:path';
 import { describe, expect, it } from 'vitest';
-import { operations, type Operation } from '$lib/api/contract';
+import { operations } from '$lib/api/contract';
+import type { Operation } from '$lib/api/contract/operation';
 import { openApi } from '$lib/server/http/openapi';
 
 const rows = Object.entries(operations) as [keyof typeof operations, Operation][];

@@ -11,7 +11,7 @@ import {
 	SRGBColorSpace
 } from 'three';
 import { boxPoint, heldPoints, restPoints } from '$lib/state/bench-geometry';
-import type { Box } from '$lib/api/schemas';
+import type { Box } from '$lib/api/schemas/drawn';
 import type { Vec3 } from '$lib/workers/display-protocol';
 import type { Palette } from './palette';
 

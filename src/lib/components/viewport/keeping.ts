@@ -13,7 +13,8 @@ import {
 	Quaternion,
 	Vector3
 } from 'three';
-import type { KeepOut, Plane } from '$lib/api/schemas';
+import type { Plane } from '$lib/api/schemas/common';
+import type { KeepOut } from '$lib/api/schemas/drawn';
 import type { KeepOutMesh } from '$lib/state/bench-keeping.svelte';
 import type { DisplayMesh, Vec3 } from '$lib/workers/display-protocol';
 import type { Palette } from './palette';

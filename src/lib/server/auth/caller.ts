@@ -1,5 +1,5 @@
 /** Who makes a call, as the hooks find it and the services take it. */
-import type { Role } from '$lib/api/schemas';
+import type { Role } from '$lib/api/schemas/common';
 
 /** A person as read from the database for this request. */
 export interface SignedInUser {

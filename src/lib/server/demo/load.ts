@@ -1,5 +1,7 @@
 /** Walks the demo's plan through the product's own services and jobs, as a person would. */
-import { boxCreate, objectiveCreate, recipeRequest, studyCreate, type Study } from '$lib/api/schemas';
+import { boxCreate } from '$lib/api/schemas/drawn';
+import { recipeRequest } from '$lib/api/schemas/moves';
+import { objectiveCreate, studyCreate, type Study } from '$lib/api/schemas/studies';
 import type { Actor, StudyAccess } from '../auth/caller';
 import { sweep } from '../content/store';
 import { withUpload } from '../content/upload';

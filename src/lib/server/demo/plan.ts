@@ -4,7 +4,9 @@
  * maker, the people, the pod, the maps and the results.
  */
 import type { z } from 'zod';
-import type { boxCreate, objectiveCreate, operatingPointCreate, Role, studyCreate } from '$lib/api/schemas';
+import type { Role } from '$lib/api/schemas/common';
+import type { boxCreate } from '$lib/api/schemas/drawn';
+import type { objectiveCreate, operatingPointCreate, studyCreate } from '$lib/api/schemas/studies';
 import { writeStl } from '$lib/morph';
 import { mapCsv, type DemoObjective } from './maps';
 import { podSurface, type DemoSurface } from './pod-mesh';

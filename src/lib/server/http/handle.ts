@@ -4,8 +4,8 @@
  */
 import { isHttpError, isRedirect, json, type RequestEvent, type RequestHandler } from '@sveltejs/kit';
 import type { z } from 'zod';
-import type { Operation, Subject } from '$lib/api/contract';
-import type { Role } from '$lib/api/schemas';
+import type { Operation, Subject } from '$lib/api/contract/operation';
+import type { Role } from '$lib/api/schemas/common';
 import type { Caller, SignedInUser, StudyAccess } from '../auth/caller';
 import { AppError } from '../errors';
 import { findStudyAccess, type StudySubject } from '../repositories/access';

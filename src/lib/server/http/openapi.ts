@@ -1,9 +1,20 @@
 /** The OpenAPI 3.1 description, made from the contract and the schemas that validate. */
 import { z } from 'zod';
-import { operations, type Operation } from '$lib/api/contract';
-import * as schemas from '$lib/api/schemas';
+import { operations } from '$lib/api/contract';
+import type { Operation } from '$lib/api/contract/operation';
+import * as common from '$lib/api/schemas/common';
+import * as drawn from '$lib/api/schemas/drawn';
+import * as jobs from '$lib/api/schemas/jobs';
+import * as maps from '$lib/api/schemas/maps';
+import * as moves from '$lib/api/schemas/moves';
+import * as people from '$lib/api/schemas/people';
+import * as shapes from '$lib/api/schemas/shapes';
+import * as studies from '$lib/api/schemas/studies';
 import { version } from '../../../../package.json';
 import { componentsOf, type JsonSchema } from './openapi-components';
+
+/** Every wire type, under the name that the description gives it. */
+const schemas = { ...common, ...drawn, ...jobs, ...maps, ...moves, ...people, ...shapes, ...studies };
 
 const json = (schema: JsonSchema) => ({ 'application/json': { schema } });
 

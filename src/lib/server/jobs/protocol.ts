@@ -1,6 +1,6 @@
 /** What is sent to a worker thread, and what comes back. Everything else is read from and written to the database by the thread. */
 import type { MessagePort } from 'node:worker_threads';
-import type { MoveAnswer, RecipeRequest } from '$lib/api/schemas';
+import type { MoveAnswer, RecipeRequest } from '$lib/api/schemas/moves';
 import type { AppErrorOptions, ErrorCode } from '../errors';
 import type { ClaimedJob } from '../repositories/jobs';
 import type { StopReason } from './control';

@@ -1,7 +1,7 @@
 /** The study that a path's id belongs to, found only for its members. */
 import { QueryTypes } from 'sequelize';
-import type { Subject } from '$lib/api/contract';
-import type { Role } from '$lib/api/schemas';
+import type { Subject } from '$lib/api/contract/operation';
+import type { Role } from '$lib/api/schemas/common';
 import { database } from '../db/client';
 import type { Caller } from '../auth/caller';
 

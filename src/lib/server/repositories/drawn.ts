@@ -1,6 +1,6 @@
 /** Queries about design boxes, keep-outs and locks. A thing's definition is that of its newest version; no version is ever changed. */
 import { QueryTypes, type ModelStatic } from 'sequelize';
-import type { BoxCreate, KeepOutDefinition, LockCreate } from '$lib/api/schemas';
+import type { BoxCreate, KeepOutDefinition, LockCreate } from '$lib/api/schemas/drawn';
 import { database } from '../db/client';
 import {
 	DesignBoxModel,

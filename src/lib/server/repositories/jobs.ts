@@ -1,6 +1,7 @@
 /** Queries on jobs. A worker's writes name the worker and its attempt, so that one that was given up changes nothing. */
 import { QueryTypes } from 'sequelize';
-import type { Job, Problem } from '$lib/api/schemas';
+import type { Problem } from '$lib/api/schemas/common';
+import type { Job } from '$lib/api/schemas/jobs';
 import { database } from '../db/client';
 import { JobModel } from '../db/models/shapes';
 import type { Tx } from './transaction';

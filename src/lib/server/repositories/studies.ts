@@ -1,6 +1,7 @@
 /** Queries about studies, their people, objectives and operating points. */
 import { QueryTypes } from 'sequelize';
-import type { LengthUnit, Plane, Rehearsal, Role, Sense } from '$lib/api/schemas';
+import type { LengthUnit, Plane, Role } from '$lib/api/schemas/common';
+import type { Rehearsal, Sense } from '$lib/api/schemas/studies';
 import { database } from '../db/client';
 import { UserModel } from '../db/models/people';
 import { ObjectiveModel, OperatingPointModel, StudyMemberModel, StudyModel } from '../db/models/studies';

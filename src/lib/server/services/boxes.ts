@@ -1,5 +1,5 @@
 /** Design boxes. */
-import type { Box, BoxCreate } from '$lib/api/schemas';
+import type { Box, BoxCreate } from '$lib/api/schemas/drawn';
 import { boxes, type DrawnRow } from '../repositories/drawn';
 import { DrawnService } from './drawn';
 

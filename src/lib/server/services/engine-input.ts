@@ -8,7 +8,8 @@ import {
 	type MoveConstraint,
 	type PlaceSource
 } from '$lib/morph';
-import type { ConstraintRequest, KeepOut, Recipe } from '$lib/api/schemas';
+import type { KeepOut } from '$lib/api/schemas/drawn';
+import type { ConstraintRequest, Recipe } from '$lib/api/schemas/moves';
 import { readWhole } from '../content/store';
 import { keepOutContents } from './keep-outs';
 import { patchTriangles } from './lock-weights';

@@ -1,5 +1,5 @@
 /** The readable page that goes to the solver's people with a shape. */
-import type { Check, ConstraintAnswer } from '$lib/api/schemas';
+import type { Check, ConstraintAnswer } from '$lib/api/schemas/moves';
 import type { ShapeRow } from '../repositories/shapes';
 import type { StudyRow } from '../repositories/studies';
 import { CAUTION } from './move-engine';

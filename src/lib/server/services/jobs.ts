@@ -1,6 +1,6 @@
 /** Jobs as pages and programs see them. */
 import { randomUUID } from 'node:crypto';
-import type { Job } from '$lib/api/schemas';
+import type { Job } from '$lib/api/schemas/jobs';
 import type { Actor } from '../auth/caller';
 import { removeContents } from '../content/store';
 import { AppError } from '../errors';

@@ -1,6 +1,6 @@
 /** Keep-outs: where the surface must not go, or must stay. */
 import type { z } from 'zod';
-import type { KeepOut, KeepOutDefinition, keepOutImportQuery, keepOutReplace } from '$lib/api/schemas';
+import type { KeepOut, KeepOutDefinition, keepOutImportQuery, keepOutReplace } from '$lib/api/schemas/drawn';
 import type { Actor, StudyAccess } from '../auth/caller';
 import type { Upload } from '../content/upload';
 import { AppError } from '../errors';

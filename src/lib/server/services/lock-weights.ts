@@ -1,6 +1,6 @@
 /** Patches as triangles, and locks as weights by vertex. */
 import { lockWeights, type Patch, type Surface, type SurfaceLock } from '$lib/morph';
-import type { Lock } from '$lib/api/schemas';
+import type { Lock } from '$lib/api/schemas/drawn';
 
 /** Triangles of some patches, ascending. */
 export function patchTriangles(names: string[], patches: Patch[]): Uint32Array {

@@ -1,5 +1,5 @@
 /** Locks: patches and painted triangles that a move leaves alone. */
-import type { Lock, LockCreate } from '$lib/api/schemas';
+import type { Lock, LockCreate } from '$lib/api/schemas/drawn';
 import { locks, type DrawnRow } from '../repositories/drawn';
 import { DrawnService } from './drawn';
 

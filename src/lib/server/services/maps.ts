@@ -1,6 +1,6 @@
 /** Sensitivity maps: uploading one, and its values for display. */
 import type { z } from 'zod';
-import type { mapImportQuery } from '$lib/api/schemas';
+import type { mapImportQuery } from '$lib/api/schemas/maps';
 import type { Actor } from '../auth/caller';
 import type { Upload } from '../content/upload';
 import { inTransaction } from '../repositories/transaction';

@@ -1,5 +1,6 @@
 /** Who takes part in a study. */
-import { id as uuid, type Member, type Role } from '$lib/api/schemas';
+import { id as uuid, type Role } from '$lib/api/schemas/common';
+import { type Member } from '$lib/api/schemas/people';
 import type { StudyAccess } from '../auth/caller';
 import { AppError } from '../errors';
 import { recordEvent } from '../repositories/audit';

@@ -11,7 +11,7 @@ import {
 	type Surface,
 	type SymmetryPlane
 } from '$lib/morph';
-import type { Recipe } from '$lib/api/schemas';
+import type { Recipe } from '$lib/api/schemas/moves';
 import { readWhole } from '../content/store';
 import { AppError } from '../errors';
 import { findMaps, findStudy, type MapRow, type ShapeRow } from '../repositories/shapes';

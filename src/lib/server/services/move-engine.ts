@@ -11,7 +11,7 @@ import {
 	type MoveSolution,
 	type StoredPositions
 } from '$lib/morph';
-import type { Check, ConstraintAnswer, ConstraintRequest, MoveAnswer, Recipe } from '$lib/api/schemas';
+import type { Check, ConstraintAnswer, ConstraintRequest, MoveAnswer, Recipe } from '$lib/api/schemas/moves';
 import { AppError } from '../errors';
 import type { Control } from '../jobs/control';
 import { findShape, type ShapeRow } from '../repositories/shapes';

@@ -1,6 +1,6 @@
 /** Moves: previewed in a worker thread while the caller waits, committed by a job. */
 import type { z } from 'zod';
-import type { moveRequest, MoveAnswer, RecipeRequest } from '$lib/api/schemas';
+import type { moveRequest, MoveAnswer, RecipeRequest } from '$lib/api/schemas/moves';
 import type { Actor } from '../auth/caller';
 import { AppError } from '../errors';
 import { Control } from '../jobs/control';

@@ -1,5 +1,7 @@
 /** Completes what a caller asks for to a recipe: everything that the move depends on, as it is at this moment. */
-import type { Box, ConstraintRequest, KeepOut, LengthUnit, Lock, Recipe, RecipeRequest } from '$lib/api/schemas';
+import type { LengthUnit } from '$lib/api/schemas/common';
+import type { Box, KeepOut, Lock } from '$lib/api/schemas/drawn';
+import type { ConstraintRequest, Recipe, RecipeRequest } from '$lib/api/schemas/moves';
 import { AppError } from '../errors';
 import { boxes as boxRows, keepOuts as keepOutRows, locks as lockRows } from '../repositories/drawn';
 import { findLatestMaps, findLatestResults, type MapRow, type ShapeRow } from '../repositories/shapes';

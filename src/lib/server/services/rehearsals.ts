@@ -1,6 +1,6 @@
 /** Rehearsal objectives: computed from the surface alone, in place of a solver. */
 import type { z } from 'zod';
-import type { rehearsalRequest } from '$lib/api/schemas';
+import type { rehearsalRequest } from '$lib/api/schemas/maps';
 import type { Actor } from '../auth/caller';
 import { AppError } from '../errors';
 import { listObjectives, listOperatingPoints } from '../repositories/studies';

@@ -1,5 +1,8 @@
 /** Shapes, maps and results as they leave: every field is named here. */
-import type { Person, Prediction, Result, SensitivityMap, Shape, ShapeState, ShapeSummary } from '$lib/api/schemas';
+import type { Person } from '$lib/api/schemas/common';
+import type { Result, SensitivityMap } from '$lib/api/schemas/maps';
+import type { Prediction } from '$lib/api/schemas/moves';
+import type { Shape, ShapeState, ShapeSummary } from '$lib/api/schemas/shapes';
 import type { MapRow, ResultRow, ShapeRow, UserRow } from '../repositories/shapes';
 
 const person = (user: UserRow | null | undefined): Person | null => (user ? { id: user.id, name: user.name } : null);

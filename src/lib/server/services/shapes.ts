@@ -1,6 +1,7 @@
 /** Shapes of a study: uploading one, looking at them, and what the solver found for one. */
 import type { z } from 'zod';
-import type { Result, resultCreate, Shape, shapeImportQuery, ShapeSummary } from '$lib/api/schemas';
+import type { Result, resultCreate } from '$lib/api/schemas/maps';
+import type { Shape, shapeImportQuery, ShapeSummary } from '$lib/api/schemas/shapes';
 import type { Actor } from '../auth/caller';
 import type { Upload } from '../content/upload';
 import { AppError } from '../errors';

@@ -1,6 +1,6 @@
 /** Studies, their objectives and operating points. */
 import type { z } from 'zod';
-import type * as wire from '$lib/api/schemas';
+import type * as wire from '$lib/api/schemas/studies';
 import type { Caller, StudyAccess } from '../auth/caller';
 import { AppError } from '../errors';
 import { recordEvent } from '../repositories/audit';

@@ -1,5 +1,6 @@
 /** API tokens: a program acts as the person who made its token, in all their studies or in one. */
-import { id as uuid, type Token } from '$lib/api/schemas';
+import { id as uuid } from '$lib/api/schemas/common';
+import { type Token } from '$lib/api/schemas/people';
 import { newToken } from '../auth/bearer';
 import type { Actor, Caller } from '../auth/caller';
 import { AppError } from '../errors';

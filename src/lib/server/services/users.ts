@@ -1,6 +1,6 @@
 /** The people of the installation; only its admins come here. */
 import type { z } from 'zod';
-import type * as wire from '$lib/api/schemas';
+import type * as wire from '$lib/api/schemas/people';
 import type { Actor } from '../auth/caller';
 import { hashPassword } from '../auth/password';
 import { AppError } from '../errors';

@@ -7,8 +7,13 @@ import {
 	type Sequelize
 } from 'sequelize';
 import type { z } from 'zod';
-import type { MoveAnswer, Recipe, SensitivityMap, Shape } from '$lib/api/schemas';
-import type { jobKind, jobState, mapReport, patch, Problem } from '$lib/api/schemas';
+import type { SensitivityMap } from '$lib/api/schemas/maps';
+import type { MoveAnswer, Recipe } from '$lib/api/schemas/moves';
+import type { Shape } from '$lib/api/schemas/shapes';
+import type { Problem } from '$lib/api/schemas/common';
+import type { jobKind, jobState } from '$lib/api/schemas/jobs';
+import type { mapReport } from '$lib/api/schemas/maps';
+import type { patch } from '$lib/api/schemas/shapes';
 import { primaryId, reference, createdAt, text, number, count, json, flag } from './columns';
 import { UserModel } from './people';
 

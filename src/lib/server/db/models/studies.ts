@@ -6,7 +6,8 @@ import {
 	type InferCreationAttributes,
 	type Sequelize
 } from 'sequelize';
-import type { LengthUnit, Plane, Rehearsal, Role, Sense } from '$lib/api/schemas';
+import type { LengthUnit, Plane, Role } from '$lib/api/schemas/common';
+import type { Rehearsal, Sense } from '$lib/api/schemas/studies';
 import { primaryId, reference, createdAt, text, number, count, flag, withTimes } from './columns';
 import { UserModel } from './people';
 

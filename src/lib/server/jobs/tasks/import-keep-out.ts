@@ -1,7 +1,7 @@
 /** Reads an uploaded surface and stores it as a keep-out of its study. */
 import { readSurface } from '$lib/formats/read';
 import { surfaceMeasures, toMetres } from '$lib/morph';
-import type { KeepOutDefinition, keepOutImportQuery } from '$lib/api/schemas';
+import type { KeepOutDefinition, keepOutImportQuery } from '$lib/api/schemas/drawn';
 import type { z } from 'zod';
 import { putContent, readWhole } from '../../content/store';
 import { AppError } from '../../errors';

@@ -1,7 +1,9 @@
 /** Reads an uploaded sensitivity map, brings it onto its shape and stores it. */
 import { randomUUID } from 'node:crypto';
 import { makeSurface, mapTotal, matchMap, nodalGradient, readMapCsv, toMetres, type MapMatch } from '$lib/morph';
-import type { MapImported, SensitivityMap, Shape } from '$lib/api/schemas';
+import type { MapImported } from '$lib/api/schemas/jobs';
+import type { SensitivityMap } from '$lib/api/schemas/maps';
+import type { Shape } from '$lib/api/schemas/shapes';
 import { putContent, readWhole } from '../../content/store';
 import { AppError } from '../../errors';
 import { recordEvent } from '../../repositories/audit';

@@ -1,7 +1,8 @@
 /** Previews a move, or commits it as a new shape. */
 import { randomUUID } from 'node:crypto';
 import { surfaceMeasures, toMetres } from '$lib/morph';
-import type { Check, MoveAnswer, MoveCommitted, Recipe, RecipeRequest } from '$lib/api/schemas';
+import type { MoveCommitted } from '$lib/api/schemas/jobs';
+import type { Check, MoveAnswer, Recipe, RecipeRequest } from '$lib/api/schemas/moves';
 import { POSITION_CHUNK_BYTES, putContent } from '../../content/store';
 import { AppError } from '../../errors';
 import { recordEvent } from '../../repositories/audit';

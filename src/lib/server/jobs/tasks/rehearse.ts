@@ -1,7 +1,7 @@
 /** Computes rehearsal objectives on a shape and stores value and map of each, as if a solver had posted them. */
 import { randomUUID } from 'node:crypto';
 import { mapTotal, rehearse } from '$lib/morph';
-import type { Rehearsal } from '$lib/api/schemas';
+import type { Rehearsal } from '$lib/api/schemas/studies';
 import { putContent } from '../../content/store';
 import { AppError } from '../../errors';
 import { recordEvent } from '../../repositories/audit';

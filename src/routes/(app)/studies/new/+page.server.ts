@@ -1,6 +1,7 @@
 import { fail, redirect } from '@sveltejs/kit';
 import { ApiProblem } from '$lib/api/client';
-import { objectiveCreate, type LengthUnit, type Sense } from '$lib/api/schemas';
+import { type LengthUnit } from '$lib/api/schemas/common';
+import { objectiveCreate, type Sense } from '$lib/api/schemas/studies';
 import { answerForm, FormReader } from '$lib/api/server';
 import type { Actions } from './$types';
 

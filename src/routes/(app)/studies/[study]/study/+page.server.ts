@@ -1,4 +1,5 @@
-import type { LengthUnit, Rehearsal, Role, Sense } from '$lib/api/schemas';
+import type { LengthUnit, Role } from '$lib/api/schemas/common';
+import type { Rehearsal, Sense } from '$lib/api/schemas/studies';
 import { answerForm } from '$lib/api/server';
 import { metresPerUnit } from '$lib/format/units';
 import type { Actions } from './$types';
