@@ -29,8 +29,8 @@ const CELL_STEPS = [1, 2, 4, 6, 8, 12, 16, 20, 24, 32, 40, 48, 64, 80, 96, 128];
 const ORDERS = [4, 5, 6, 7, 8, 9];
 /**
  * Bound of the truncation, relative to polynomials of largest value 1: for the metric, and for moves and gradients. The
- * bound adds the largest coefficients of all polynomials and cells; what is really lost is a hundred times less and more
- * (tests/unit/morph/cells.test.ts).
+ * bound adds the largest coefficients of all polynomials and cells; what is really lost is several times less
+ * (tests/property/morph/paths.test.ts).
  */
 export const METRIC_TOLERANCE = 2e-9;
 export const FIELD_TOLERANCE = 2e-11;
