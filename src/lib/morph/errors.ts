@@ -5,7 +5,6 @@ export type MorphErrorCode =
 	| 'stl-not-stl'
 	| 'stl-syntax'
 	| 'stl-non-finite'
-	| 'stl-too-large'
 	| 'file-empty'
 	| 'file-unknown'
 	| 'file-truncated'

@@ -99,7 +99,12 @@ export function readMapCsv(bytes: Uint8Array, options: WithCheckpoint = {}): Map
 		const count = fields.length / 2;
 		if (!columns) {
 			fieldCount = count;
-			if (Number.isNaN(parseNumber(bytes, fields[0], fields[1])) && !/^[+-]?(nan|inf)/i.test(text(0))) {
+			// A row with one faulty number is no header: its other fields are numbers, or hold no letter (decimal commas).
+			const isName = (k: number) =>
+				/\p{L}/u.test(text(k)) &&
+				!/^[+-]?(nan|inf(inity)?)$/i.test(text(k)) &&
+				Number.isNaN(parseNumber(bytes, fields[2 * k], fields[2 * k + 1]));
+			if (Array.from({ length: count }, (_, k) => k).every(isName)) {
 				header = Array.from({ length: count }, (_, k) =>
 					text(k)
 						.replace(/^"(.*)"$/, '$1')

@@ -80,7 +80,6 @@ const MORPH_CODES: Record<MorphErrorCode, ErrorCode> = {
 	'stl-not-stl': 'bad-file',
 	'stl-syntax': 'bad-file',
 	'stl-non-finite': 'bad-file',
-	'stl-too-large': 'too-large',
 	'file-empty': 'bad-file',
 	'file-unknown': 'bad-file',
 	'file-truncated': 'bad-file',
