@@ -1,3 +1,8 @@
+import type { PreparedKeepOut } from './keep-out';
+import { checkKeepOuts, checkRadius, checkThickness, type MovedSurface } from './place-checks';
+import { selfIntersections } from './self-intersection';
+import type { PreparedThickness } from './thickness';
+import type { TriangleTree } from './triangle-tree';
 import type { CheckResult, MoveChecks, WithCheckpoint } from './types';
 
 export interface CheckMoveInput extends WithCheckpoint {
@@ -15,12 +20,33 @@ export interface CheckMoveInput extends WithCheckpoint {
 	minAngleHard?: boolean;
 	/** Metres per unit of the positions, for the places; default 1. */
 	metresPerUnit?: number;
+	/** Smallest and largest area of a moved triangle over the parent's; left out: not looked at. */
+	areaRatio?: { least: number; most: number };
+	/** New crossings of moved triangles with any others; left out: not looked for. */
+	selfIntersection?: {
+		/** Over the triangles at about these positions, in the unit of the positions; it is refitted. */
+		tree?: TriangleTree;
+	};
+	/** Wall thickness (metres), at the vertices meant, default all that moved. */
+	thickness?: { prepared: PreparedThickness; vertices?: Uint32Array }[];
+	/** Keep-outs and envelopes (metres). */
+	keepOuts?: { label: string; prepared: PreparedKeepOut }[];
+	/** Smallest radius of convex curvature; with a limit (metres) it is hard. */
+	radius?: { limit?: number };
 }
 
 const DEFAULT_MIN_ANGLE = 3;
 
+/** Common practice for surface meshes that are moved and not made anew: no triangle below a quarter or above four times its area. */
+export const USUAL_AREA_RATIO = { least: 0.25, most: 4 } as const;
 /**
- * Looks at the moved triangles: those that flipped (normal turned by 90 degrees or more against the parent) and the
+ * Metres. UN Regulation No. 26 (external projections of cars, category M1; parts that a 100 mm sphere can touch) is the usual
+ * reference. Whether it, and which of its exceptions, applies is for the local codes and licensed practice.
+ */
+export const USUAL_LEAST_RADIUS = 0.0025;
+
+/**
+ * Looks at the moved triangles, and at what else is asked for: those that flipped (normal turned by 90 degrees or more against the parent) and the
  * smallest interior angle. Triangles without area in the parent are left out: they have neither normal nor angles.
  */
 export function checkMove(input: CheckMoveInput): MoveChecks {
@@ -92,7 +118,7 @@ export function checkMove(input: CheckMoveInput): MoveChecks {
 			worstAngle = i / 3;
 		}
 	}
-	input.checkpoint?.(1);
+	input.checkpoint?.(0.5);
 	const place = (triangle: number): CheckResult['place'] => {
 		if (triangle < 0) return null;
 		const position: [number, number, number] = [0, 0, 0];
@@ -103,7 +129,7 @@ export function checkMove(input: CheckMoveInput): MoveChecks {
 		return { triangle, position };
 	};
 	const angle = worstAngle < 0 ? 60 : (Math.acos(Math.min(1, Math.max(-1, largestCosine))) * 180) / Math.PI;
-	return {
+	const checks: MoveChecks = {
 		flipped: { value: flipped, limit: 0, ok: flipped === 0, hard: true, count: flipped, place: place(worstFlip) },
 		minAngle: {
 			value: angle,
@@ -114,4 +140,106 @@ export function checkMove(input: CheckMoveInput): MoveChecks {
 			place: place(worstAngle)
 		}
 	};
+	const all = moved ?? Uint32Array.from({ length: before.length / 3 }, (_, v) => v);
+	const faces = movedFaces(triangles, mark);
+	if (input.areaRatio) checks.areaRatio = checkAreas(input, faces, place);
+	if (input.selfIntersection) {
+		const positions = float64(after, 1);
+		const { tree } = input.selfIntersection;
+		const found = selfIntersections(positions, triangles, {
+			chosen: faces,
+			before: float64(before, 1),
+			limit: 1,
+			tree
+		});
+		checks.selfIntersection = {
+			value: found.count,
+			limit: 0,
+			ok: found.count === 0,
+			hard: true,
+			count: found.count,
+			place: found.count > 0 ? place(found.pairs[0]) : null,
+			before: found.known
+		};
+	}
+	input.checkpoint?.(0.7);
+	if (input.thickness?.length || input.keepOuts?.length || input.radius) {
+		const metres = input.metresPerUnit ?? 1;
+		const surface: MovedSurface = {
+			before: float64(before, metres),
+			after: float64(after, metres),
+			triangles,
+			moved: all,
+			faces
+		};
+		const { thickness, keepOuts, radius } = input;
+		if (thickness?.length) checks.thickness = checkThickness(surface, thickness);
+		if (keepOuts?.length) checks.keepOut = checkKeepOuts(surface, keepOuts);
+		if (radius) checks.radius = checkRadius(surface, radius.limit);
+	}
+	input.checkpoint?.(1);
+	return Object.fromEntries(Object.entries(checks).filter(([, check]) => check !== undefined)) as unknown as MoveChecks;
+}
+
+function float64(values: ArrayLike<number>, factor: number): Float64Array {
+	if (values instanceof Float64Array && factor === 1) return values;
+	const out = new Float64Array(values.length);
+	for (let i = 0; i < out.length; i++) out[i] = factor * values[i];
+	return out;
+}
+
+function movedFaces(triangles: Uint32Array, mark: Uint8Array | null): Uint32Array {
+	const faces = new Uint32Array(triangles.length / 3);
+	let count = 0;
+	for (let t = 0; t < faces.length; t++) {
+		if (!mark || mark[triangles[3 * t]] | mark[triangles[3 * t + 1]] | mark[triangles[3 * t + 2]]) faces[count++] = t;
+	}
+	return faces.slice(0, count);
+}
+
+/** The triangle whose area grew or shrank most against the parent's; those without area there are left out. */
+function checkAreas(
+	{ before, after, triangles, areaRatio }: CheckMoveInput,
+	faces: Uint32Array,
+	place: (triangle: number) => CheckResult['place']
+): CheckResult {
+	const { least, most } = areaRatio ?? USUAL_AREA_RATIO;
+	let count = 0;
+	let worst = 1;
+	let at = -1;
+	for (let i = 0; i < faces.length; i++) {
+		const [a, b, c] = [3 * triangles[3 * faces[i]], 3 * triangles[3 * faces[i] + 1], 3 * triangles[3 * faces[i] + 2]];
+		const old = doubleArea(before, a, b, c);
+		if (!(old > 0)) continue;
+		const ratio = doubleArea(after, a, b, c) / old;
+		if (ratio < least || ratio > most) count++;
+		// How far beyond, or how near to, the limit on its own side.
+		if (at >= 0 && !(strain(ratio, least, most) > strain(worst, least, most))) continue;
+		worst = ratio;
+		at = faces[i];
+	}
+	return {
+		value: worst,
+		limit: worst < 1 ? least : most,
+		ok: count === 0,
+		hard: false,
+		count,
+		place: place(at)
+	};
+}
+
+const strain = (ratio: number, least: number, most: number) =>
+	ratio < 1 ? Math.log(ratio) / Math.log(least) : Math.log(ratio) / Math.log(most);
+
+function doubleArea(p: ArrayLike<number>, a: number, b: number, c: number): number {
+	const ux = p[b] - p[a];
+	const uy = p[b + 1] - p[a + 1];
+	const uz = p[b + 2] - p[a + 2];
+	const vx = p[c] - p[a];
+	const vy = p[c + 1] - p[a + 1];
+	const vz = p[c + 2] - p[a + 2];
+	const x = uy * vz - uz * vy;
+	const y = uz * vx - ux * vz;
+	const z = ux * vy - uy * vx;
+	return Math.sqrt(x * x + y * y + z * z);
 }

@@ -16,10 +16,16 @@ export { helmholtz, solveSparse, type SparseMatrix } from './laplacian';
 export { mirrorBox } from './symmetry';
 export { latticeMotion, type LatticeMotion } from './motion';
 export { applyDisplacement, storePositions } from './store';
-export { checkMove, type CheckMoveInput } from './checks';
+export { checkMove, USUAL_AREA_RATIO, USUAL_LEAST_RADIUS, type CheckMoveInput } from './checks';
 export { edgeTable, type EdgeTable } from './half-edges';
 export { type PlaceConstraint, type PlaceRows, type PlaceSource } from './place-rows';
-export { prepareKeepOut, type KeepOutGeometry, type KeepOutSide, type PreparedKeepOut } from './keep-out';
+export {
+	prepareKeepOut,
+	type KeepOutGeometry,
+	type KeepOutSide,
+	type Penetration,
+	type PreparedKeepOut
+} from './keep-out';
 export { lockWeights, type SurfaceLock } from './locks';
 export { patchVolume, type PartSurface } from './part-volume';
 export { CurvatureProbe, smallestRadii, type Curvatures, type RadiusPlace } from './curvature';

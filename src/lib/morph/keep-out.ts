@@ -1,7 +1,9 @@
 import { boxAxes } from './box';
 import { MorphError } from './errors';
 import { PlaceRowsBuilder, type PlaceConstraint } from './place-rows';
-import { SignedDistance } from './signed-distance';
+import { cutsBetween } from './keep-out-cuts';
+import { SignedDistance, type DistanceField } from './signed-distance';
+import { TriangleTree } from './triangle-tree';
 
 /** Space that the surface must stay out of, or stay in. Metres, the study's frame. */
 export type KeepOutGeometry =
@@ -44,19 +46,37 @@ export interface PreparedKeepOut {
 	distance(points: Float64Array, n: number, limit: number, outDistance: Float64Array, outGradient: Float64Array): void;
 	/** Distance >= clearance at these vertices. */
 	place(vertices: Uint32Array): PlaceConstraint;
+	/**
+	 * How near some triangles come to the geometry, and whether they cut it between their vertices.
+	 * @param positions N x 3, metres; borrowed
+	 * @param triangles F x 3; borrowed
+	 * @param chosen triangle ids, ascending
+	 * @param tolerance metres by which vertices may miss the clearance
+	 * @param sag metres by which a triangle may cut the geometry between its vertices
+	 */
+	penetration(
+		positions: Float64Array,
+		triangles: Uint32Array,
+		chosen: Uint32Array,
+		tolerance: number,
+		sag: number
+	): Penetration;
 }
 
-/** Signed distance with the sign of 'outside', and its gradient in the fields. */
-interface Field {
-	distance: number;
-	gx: number;
-	gy: number;
-	gz: number;
-	/** Answers exactly for distances in [low, high]; beyond, with anything beyond on the same side. */
-	at(x: number, y: number, z: number, low: number, high: number): void;
+export interface Penetration {
+	/** Smallest signed distance found, metres; null when no vertex lies within a thousand times the size of the surface. */
+	distance: number | null;
+	/** Where it was found. */
+	position: [number, number, number] | null;
+	/** A chosen triangle there. */
+	triangle: number;
+	/** Vertices nearer than the clearance less the tolerance. */
+	vertices: number;
+	/** Triangles that cut deeper than the sag, though their vertices keep the clearance. */
+	cuts: number;
 }
 
-class HalfSpaceField implements Field {
+class HalfSpaceField implements DistanceField {
 	distance = 0;
 	readonly gx: number;
 	readonly gy: number;
@@ -75,7 +95,7 @@ class HalfSpaceField implements Field {
 }
 
 /** Distance to an oriented box in closed form; inside, to its nearest face. */
-class BoxField implements Field {
+class BoxField implements DistanceField {
 	distance = 0;
 	gx = 0;
 	gy = 0;
@@ -139,7 +159,7 @@ function checkNumbers(name: string, values: readonly number[], length: number): 
 	}
 }
 
-function fieldOf(geometry: KeepOutGeometry): Field {
+function fieldOf(geometry: KeepOutGeometry): DistanceField {
 	if (geometry.kind === 'halfSpace') {
 		checkNumbers('point', geometry.point, 3);
 		checkNumbers('normal', geometry.normal, 3);
@@ -193,7 +213,7 @@ class KeepOut implements PreparedKeepOut {
 		readonly geometry: KeepOutGeometry,
 		readonly side: KeepOutSide,
 		readonly clearance: number,
-		private readonly field: Field
+		private readonly field: DistanceField
 	) {}
 
 	distance(points: Float64Array, n: number, limit: number, outDistance: Float64Array, outGradient: Float64Array): void {
@@ -233,4 +253,97 @@ class KeepOut implements PreparedKeepOut {
 			}
 		};
 	}
+
+	/** The geometry's surface, where a triangle with all its vertices on the right side can still cut it. */
+	private surfaceTree(): TriangleTree | null {
+		const { geometry, field } = this;
+		if (field instanceof SignedDistance) return field.triangleTree;
+		// A half-space, and a box from inside, are convex on the allowed side.
+		if (geometry.kind !== 'box' || this.side === 'inside') return null;
+		return boxTree(geometry);
+	}
+
+	penetration(
+		positions: Float64Array,
+		triangles: Uint32Array,
+		chosen: Uint32Array,
+		tolerance: number,
+		sag: number
+	): Penetration {
+		const { vertices, holder, size } = verticesOf(positions, triangles, chosen);
+		const result: Penetration = { distance: null, position: null, triangle: -1, vertices: 0, cuts: 0 };
+		const constraint = this.place(vertices);
+		// The margin grows until something is found: the nearest is then among it.
+		let rows = constraint.rows(positions, tolerance);
+		for (let within = size / 64; rows.count === 0 && within < 1000 * size; within *= 8) {
+			rows = constraint.rows(positions, within);
+		}
+		const broken = new Set<number>();
+		for (let k = 0; k < rows.count; k++) {
+			if (rows.slack[k] < -tolerance) broken.add(rows.vertices[k]);
+			if (result.distance !== null && rows.values[k] >= result.distance) continue;
+			const v = rows.vertices[k];
+			result.distance = rows.values[k];
+			result.triangle = holder[v];
+			result.position = [positions[3 * v], positions[3 * v + 1], positions[3 * v + 2]];
+		}
+		result.vertices = broken.size;
+		const tree = this.surfaceTree();
+		if (tree) {
+			const sign = this.side === 'outside' ? 1 : -1;
+			for (const cut of cutsBetween(positions, triangles, chosen, broken, tree, this.field, sign, sag)) {
+				result.cuts++;
+				if (result.distance !== null && cut.distance >= result.distance) continue;
+				result.distance = cut.distance;
+				result.position = cut.position;
+				result.triangle = cut.triangle;
+			}
+		}
+		return result;
+	}
+}
+
+/** The chosen triangles' vertices, ascending; one of its triangles for each; the extent of them all. */
+function verticesOf(positions: Float64Array, triangles: Uint32Array, chosen: Uint32Array) {
+	const holder = new Int32Array(positions.length / 3).fill(-1);
+	let count = 0;
+	for (let i = 0; i < chosen.length; i++) {
+		for (let k = 0; k < 3; k++) {
+			const v = triangles[3 * chosen[i] + k];
+			if (holder[v] < 0) count++;
+			holder[v] = chosen[i];
+		}
+	}
+	const vertices = new Uint32Array(count);
+	const low = [Infinity, Infinity, Infinity];
+	const high = [-Infinity, -Infinity, -Infinity];
+	let at = 0;
+	for (let v = 0; v < holder.length; v++) {
+		if (holder[v] < 0) continue;
+		vertices[at++] = v;
+		for (let d = 0; d < 3; d++) {
+			low[d] = Math.min(low[d], positions[3 * v + d]);
+			high[d] = Math.max(high[d], positions[3 * v + d]);
+		}
+	}
+	const size = count > 0 ? Math.hypot(high[0] - low[0], high[1] - low[1], high[2] - low[2]) : 1;
+	return { vertices, holder, size: size || 1 };
+}
+
+/** Twelve triangles on the box. */
+function boxTree(geometry: Extract<KeepOutGeometry, { kind: 'box' }>): TriangleTree {
+	const m = boxAxes(geometry);
+	const positions = new Float64Array(24);
+	for (let i = 0; i < 8; i++) {
+		for (let d = 0; d < 3; d++) {
+			positions[3 * i + d] = geometry.centre[d];
+			for (let k = 0; k < 3; k++) positions[3 * i + d] += ((i >> k) & 1 ? 1 : -1) * geometry.halfSize[k] * m[3 * k + d];
+		}
+	}
+	const faces: number[] = [];
+	for (let d = 0; d < 3; d++) {
+		const [u, v, w] = [1 << d, 1 << ((d + 1) % 3), 1 << ((d + 2) % 3)];
+		faces.push(0, v + w, v, 0, w, v + w, u, u + v, u + v + w, u, u + v + w, u + w);
+	}
+	return new TriangleTree(positions, Uint32Array.from(faces));
 }

@@ -9,6 +9,16 @@ const GRID = 64;
 /** Margin of the grid around the mesh, in shares of its longest side. */
 const MARGIN = 0.125;
 
+/** Signed distance with the sign of 'outside', and its gradient in the fields. */
+export interface DistanceField {
+	distance: number;
+	gx: number;
+	gy: number;
+	gz: number;
+	/** Answers exactly for distances in [low, high]; beyond, with anything beyond on the same side. */
+	at(x: number, y: number, z: number, low: number, high: number): void;
+}
+
 /**
  * Signed distance to a closed mesh: positive outside. The magnitude is that of the nearest point; the sign comes from the
  * angle-weighted pseudonormal of the face, edge or vertex that holds it (Baerentzen and Aanaes, IEEE Transactions on
@@ -17,7 +27,7 @@ const MARGIN = 0.125;
  * Distances to the centres of the cells of a coarse grid are kept as they are asked for: a distance changes by no more
  * than the way between two points, so they give the sign and a bound to most points at once, and a short search to the rest.
  */
-export class SignedDistance {
+export class SignedDistance implements DistanceField {
 	private readonly tree: TriangleTree;
 	private readonly faceNormals: Float64Array;
 	private readonly vertexNormals: Float64Array;

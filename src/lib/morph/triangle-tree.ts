@@ -183,6 +183,36 @@ export class TriangleTree {
 	}
 
 	/**
+	 * Triangles whose leaf's box meets a box (x0, y0, z0) to (x1, y1, z1).
+	 * @param found called with offsets into `corners`; true ends the search
+	 */
+	meeting(
+		x0: number,
+		y0: number,
+		z0: number,
+		x1: number,
+		y1: number,
+		z1: number,
+		found: (offset: number) => boolean
+	): boolean {
+		const { bounds: b, right, first, count, stack } = this;
+		let top = 0;
+		stack[top++] = 0;
+		while (top > 0) {
+			const node = stack[--top];
+			const o = 6 * node;
+			if (b[o] > x1 || b[o + 3] < x0 || b[o + 1] > y1 || b[o + 4] < y0 || b[o + 2] > z1 || b[o + 5] < z0) continue;
+			if (right[node] >= 0) {
+				stack[top++] = right[node];
+				stack[top++] = node + 1;
+				continue;
+			}
+			for (let i = first[node]; i < first[node] + count[node]; i++) if (found(3 * i)) return true;
+		}
+		return false;
+	}
+
+	/**
 	 * Nearest point of the mesh within a distance: sets triangle, square, weightB, weightC.
 	 * @param limitSquare only points nearer than its root count
 	 * @returns whether there is one

@@ -372,15 +372,30 @@ export interface CheckResult {
 	ok: boolean;
 	/** A move that breaks it must not be committed. */
 	hard: boolean;
-	/** How many triangles break the limit. */
+	/** How many triangles (vertices, pairs: as the check says) break the limit. */
 	count: number;
-	/** Worst place: triangle index and its centroid in metres; null when nothing was looked at. */
+	/** Worst place: triangle index and a point on it in metres; null when nothing was looked at. */
 	place: { triangle: number; position: [number, number, number] } | null;
+	/** The same value of the parent, where the check compares with it. */
+	before?: number;
+	/** Which of several things the value belongs to: the keep-out's name. */
+	label?: string;
 }
 
+/** Each is there when it was asked for and there was something to look at. */
 export interface MoveChecks {
 	/** Triangles whose normal turned by more than 90 degrees against the parent. */
 	flipped: CheckResult;
 	/** Smallest interior angle of the moved triangles, degrees. */
 	minAngle: CheckResult;
+	/** Area over the parent's of the moved triangle that grew or shrank most, and the limit on its side. */
+	areaRatio?: CheckResult;
+	/** Pairs of triangles, at least one of them moved, that cross and did not in the parent; `before`: those that did. */
+	selfIntersection?: CheckResult;
+	/** Thinnest wall under a moved vertex, m; counted are vertices that are thinner than the limit and than they were. */
+	thickness?: CheckResult;
+	/** Distance to the keep-out that is nearest to being broken, m, and its clearance; counted are vertices and triangles. */
+	keepOut?: CheckResult;
+	/** Smallest radius of convex curvature at a moved vertex, m; counted are vertices below the limit and sharper than before. */
+	radius?: CheckResult;
 }

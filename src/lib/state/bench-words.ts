@@ -31,7 +31,12 @@ export function densityUnit(objective: Objective | undefined): string {
 
 export const checkNames: Record<string, string> = {
 	flipped: 'Flipped triangles',
-	minAngle: 'Smallest angle'
+	minAngle: 'Smallest angle',
+	areaRatio: 'Largest change of a triangle’s area',
+	selfIntersection: 'New self-intersections',
+	thickness: 'Thinnest wall',
+	keepOut: 'Nearest keep-out',
+	radius: 'Smallest convex radius'
 };
 
 /** A check's name in words, also one that this page has not met. */

@@ -151,6 +151,9 @@ export const check = z.object({
 	unit: z.string(),
 	ok: z.boolean(),
 	hard: z.boolean().describe('a move that breaks a hard check can be previewed, not committed'),
+	count: z.int().optional().describe('how many triangles, vertices or pairs break the limit'),
+	before: finite.optional().describe('of the parent, where the check compares with it'),
+	label: z.string().optional().describe('of the keep-out'),
 	triangle: z.int().optional(),
 	place: vec3.optional().describe('m, where the value is found')
 });

@@ -81,7 +81,15 @@ function constraintLine(c: ConstraintAnswer, name: (id: string | undefined) => s
 	return `  ${what} ${BOUNDS[c.bound]}${values}${c.active ? ', binds' : ', free'}`;
 }
 
-const CHECK_WORDS: Record<string, string> = { flipped: 'Flipped triangles', minAngle: 'Smallest angle' };
+const CHECK_WORDS: Record<string, string> = {
+	flipped: 'Flipped triangles',
+	minAngle: 'Smallest angle',
+	areaRatio: 'Largest change of a triangle’s area',
+	selfIntersection: 'New self-intersections',
+	thickness: 'Thinnest wall',
+	keepOut: 'Nearest keep-out',
+	radius: 'Smallest convex radius'
+};
 
 function checkLine(key: string, { value, limit, unit, ok }: Check): string {
 	return `  ${CHECK_WORDS[key] ?? key}: ${digits(value)} ${unit} (limit ${digits(limit)}) ${ok ? 'kept' : 'BROKEN'}`;

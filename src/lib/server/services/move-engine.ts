@@ -3,12 +3,20 @@ import {
 	applyDisplacement,
 	checkMove,
 	storePositions,
+	toMetres,
+	TriangleTree,
+	USUAL_AREA_RATIO,
+	type CheckMoveInput,
 	type CheckResult,
 	type MoveChecks,
 	type ConstraintReport,
 	type DesignBox,
+	type MoveConstraint,
 	type MoveObjective,
 	type MoveSolution,
+	type PlaceSource,
+	type PreparedKeepOut,
+	type PreparedThickness,
 	type StoredPositions
 } from '$lib/morph';
 import type { Check, ConstraintAnswer, ConstraintRequest, MoveAnswer, Recipe } from '$lib/api/schemas/moves';
@@ -31,6 +39,10 @@ export interface Moved {
 	indices: number[];
 	/** Given boxes; the engine's further ones are mirror images. */
 	boxes: readonly DesignBox[];
+	/** As the engine was given them. */
+	constraints: MoveConstraint[];
+	/** m, where the recipe has one. */
+	leastRadius: number | undefined;
 	/** m^3 that the stored surface must enclose, where a volume constraint binds. */
 	targetVolume: number | undefined;
 }
@@ -78,8 +90,15 @@ export async function solveMove(
 		solution,
 		indices: constraints.map(({ index }) => index),
 		boxes: prepared.boxes,
+		constraints: asked,
+		leastRadius: strictestRadius(recipe),
 		targetVolume: volume?.limit
 	};
+}
+
+function strictestRadius({ constraints }: Recipe): number | undefined {
+	const radii = constraints.flatMap((constraint) => (constraint.kind === 'radius' ? [constraint.least] : []));
+	return radii.length > 0 ? Math.max(...radii) : undefined;
 }
 
 /** What the engine does not do, refused before anything is read. */
@@ -95,7 +114,7 @@ function refuseUnsupported(recipe: Recipe): void {
 	}
 	const missing = recipe.constraints.findIndex(MISSING);
 	if (missing >= 0) {
-		const detail = 'Moves that keep a radius or the volume of a part are not available yet.';
+		const detail = 'Moves that keep the volume of a part are not available yet.';
 		throw new AppError('unsupported', detail, {
 			errors: [{ pointer: `/constraints/${missing}`, detail }],
 			mend: 'Leave the constraint out.'
@@ -112,8 +131,7 @@ function refuseUnsupported(recipe: Recipe): void {
 }
 
 /** Constraints that the engine has no kernel for yet. */
-const MISSING = ({ kind, ...constraint }: ConstraintRequest) =>
-	kind === 'radius' || (kind === 'volume' && 'patches' in constraint);
+const MISSING = ({ kind, ...constraint }: ConstraintRequest) => kind === 'volume' && 'patches' in constraint;
 
 const PLACE_KINDS: ConstraintRequest['kind'][] = ['displacement', 'keepOut', 'thickness'];
 
@@ -128,24 +146,50 @@ export function storedPositions({ parent, solution, targetVolume }: Moved): Stor
 	});
 }
 
+const isKeepOut = (source: PlaceSource): source is PreparedKeepOut => 'penetration' in source;
+const isThickness = (source: PlaceSource): source is PreparedThickness => 'least' in source;
+
 /** Checks on the moved surface: as it will be stored, or (a preview) as computed, which differs by rounding. */
-export function checkMoved({ parent, solution }: Moved, stored?: Float32Array): MoveChecks {
-	const { mesh, surface } = parent;
-	if (!stored) {
-		const after = applyDisplacement(surface.positions, solution.moved, solution.displacement);
-		return checkMove({ before: surface.positions, after, triangles: mesh.triangles, moved: solution.moved });
+export async function checkMoved(moved: Moved, cache: MeshCache, stored?: Float32Array): Promise<MoveChecks> {
+	const { parent, solution, constraints, leastRadius } = moved;
+	const { surface } = parent;
+	const { triangles } = parent.mesh;
+	const after = stored
+		? toMetres(stored, parent.metresPerUnit)
+		: applyDisplacement(surface.positions, solution.moved, solution.displacement);
+	// Most of the search's time is the tree's, which the next preview can use again.
+	const make = () => new TriangleTree(surface.positions, triangles);
+	const tree = await cache.kept(`tree ${parent.id}`, make, 20 * triangles.length);
+	const keepOuts: CheckMoveInput['keepOuts'] = [];
+	const thickness: CheckMoveInput['thickness'] = [];
+	for (const constraint of constraints) {
+		if (constraint.kind !== 'keepOut' && constraint.kind !== 'thickness') continue;
+		const { source, label, vertices } = constraint;
+		if (isKeepOut(source)) keepOuts.push({ label, prepared: source });
+		else if (isThickness(source)) thickness.push({ prepared: source, vertices });
 	}
-	const { metresPerUnit } = parent;
 	return checkMove({
-		before: mesh.positions,
-		after: stored,
-		triangles: mesh.triangles,
+		before: surface.positions,
+		after,
+		triangles,
 		moved: solution.moved,
-		metresPerUnit
+		areaRatio: USUAL_AREA_RATIO,
+		selfIntersection: { tree },
+		keepOuts,
+		thickness,
+		radius: leastRadius === undefined ? undefined : { limit: leastRadius }
 	});
 }
 
-const CHECK_UNITS: Record<keyof MoveChecks, string> = { flipped: 'triangles', minAngle: '°' };
+const CHECK_UNITS: Record<keyof MoveChecks, string> = {
+	flipped: 'triangles',
+	minAngle: '°',
+	areaRatio: '×',
+	selfIntersection: 'pairs',
+	thickness: 'm',
+	keepOut: 'm',
+	radius: 'm'
+};
 
 const checkAnswer = (result: CheckResult, unit: string): Check => ({
 	value: result.value,
@@ -153,6 +197,9 @@ const checkAnswer = (result: CheckResult, unit: string): Check => ({
 	unit,
 	ok: result.ok,
 	hard: result.hard,
+	count: result.count,
+	...(result.before !== undefined && { before: result.before }),
+	...(result.label !== undefined && { label: result.label }),
 	...(result.place && { triangle: result.place.triangle, place: result.place.position })
 });
 

@@ -37,7 +37,7 @@ export async function previewTask(
 	const complete = await completeRecipe(shape, request);
 	const moved = await solveMove(shape, complete.recipe, cache, control);
 	control.stage('Checking the moved surface', 0.9, 1);
-	return moveAnswer(complete, moved, checkMoved(moved));
+	return moveAnswer(complete, moved, await checkMoved(moved, cache));
 }
 
 /** @throws AppError check-failed and others, MorphError, Stopped, NotOurs */
@@ -45,10 +45,11 @@ export async function commitTask(task: JobTask): Promise<void> {
 	const { job, control } = task;
 	const { shapeId: parentId, name, note, recipe, objectives } = job.payload as unknown as Payload;
 	const parent = await requireShape(parentId);
-	const moved = await solveMove(parent, recipe, new MeshCache(0), control);
+	const cache = new MeshCache(0);
+	const moved = await solveMove(parent, recipe, cache, control);
 	const checkpoint = control.stage('Checking the moved surface', 0.8, 0.9);
 	const { positions } = storedPositions(moved);
-	const answer = moveAnswer({ recipe, objectives }, moved, checkMoved(moved, positions));
+	const answer = moveAnswer({ recipe, objectives }, moved, await checkMoved(moved, cache, positions));
 	refuseBroken(answer.checks);
 	const { triangles } = moved.parent.mesh;
 	const measures = surfaceMeasures(toMetres(positions, moved.parent.metresPerUnit), triangles, { checkpoint });
@@ -113,8 +114,22 @@ const BROKEN: Record<string, (check: Check) => string> = {
 	flipped: ({ value, triangle }) =>
 		`${value} triangle${value === 1 ? '' : 's'} would turn over, the worst of them triangle ${triangle}`,
 	minAngle: ({ value, limit, triangle }) =>
-		`the smallest angle would be ${value.toFixed(2)}°, below ${limit}°, in triangle ${triangle}`
+		`the smallest angle would be ${value.toFixed(2)}°, below ${limit}°, in triangle ${triangle}`,
+	selfIntersection: ({ value, before, triangle }) =>
+		`${value} pair${value === 1 ? '' : 's'} of triangles would pass through each other, the first at triangle ${triangle}` +
+		(before ? ` (${before} that do so in the parent are not counted)` : ''),
+	thickness: ({ value, limit, count, triangle }) =>
+		`at ${count} vertices the wall would be thinner than ${millimetres(limit)} and than it is, the worst of them ` +
+		`${millimetres(value)} at triangle ${triangle}`,
+	keepOut: ({ value, limit, count, label, triangle }) =>
+		`the surface would come within ${millimetres(value)} of "${label}" (clearance ${millimetres(limit)}; below 0 is inside), ` +
+		`worst at triangle ${triangle}, ${count} place${count === 1 ? '' : 's'} in all`,
+	radius: ({ value, limit, count, triangle }) =>
+		`at ${count} vertices the surface would be sharper than the radius ${millimetres(limit)} and than it is, the worst of them ` +
+		`${millimetres(value)} at triangle ${triangle}`
 };
+
+const millimetres = (metres: number) => `${Number((1000 * metres).toPrecision(3))} mm`;
 
 function refuseBroken(checks: MoveAnswer['checks']): void {
 	const broken = Object.entries(checks).filter(([, check]) => check.hard && !check.ok);
