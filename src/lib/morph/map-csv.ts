@@ -99,13 +99,13 @@ export function readMapCsv(bytes: Uint8Array, options: WithCheckpoint = {}): Map
 		const count = fields.length / 2;
 		if (!columns) {
 			fieldCount = count;
-			// A row with one faulty number is no header: its other fields are numbers, or hold no letter (decimal commas).
-			const isName = (k: number) =>
-				/\p{L}/u.test(text(k)) &&
-				!/^[+-]?(nan|inf(inity)?)$/i.test(text(k)) &&
-				Number.isNaN(parseNumber(bytes, fields[2 * k], fields[2 * k + 1]));
-			if (Array.from({ length: count }, (_, k) => k).every(isName)) {
-				header = Array.from({ length: count }, (_, k) =>
+			// A row with one faulty number is no header: its other fields are numbers, or none holds a letter (decimal commas).
+			const all = Array.from({ length: count }, (_, k) => k);
+			const isNumber = (k: number) =>
+				/^[+-]?(nan|inf(inity)?)$/i.test(text(k)) ||
+				!Number.isNaN(parseNumber(bytes, fields[2 * k], fields[2 * k + 1]));
+			if (!all.some(isNumber) && all.some((k) => /\p{L}/u.test(text(k)))) {
+				header = all.map((k) =>
 					text(k)
 						.replace(/^"(.*)"$/, '$1')
 						.trim()

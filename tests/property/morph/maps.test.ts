@@ -233,6 +233,15 @@ describe('tables of points', () => {
 		expect([Array.from(table.points), Array.from(table.values), table.components]).toEqual([[1, 2, 3], [4, 5, 6], 3]);
 	});
 
+	it('take a header with an unnamed column, as tables with row numbers have', () => {
+		const table = readMapCsv(bytes(',x,y,z,value\n0,1,2,3,4\n'));
+		expect([table.header, Array.from(table.points), Array.from(table.values)]).toEqual([
+			['', 'x', 'y', 'z', 'value'],
+			[1, 2, 3],
+			[4]
+		]);
+	});
+
 	const bad: [string, string, string, number | undefined][] = [
 		['nothing', '', 'csv-empty', undefined],
 		['remarks only', '# a\n# b\n', 'csv-empty', undefined],
