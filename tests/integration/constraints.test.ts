@@ -1,6 +1,7 @@
 /** What a move keeps clear of and leaves alone: keep-outs, locks, bounds, symmetry, points moved by hand. */
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
 import type { Box, KeepOut, Lock } from '$lib/api/schemas/drawn';
+import type { Job } from '$lib/api/schemas/jobs';
 import type { RecipeInput } from '$lib/api/schemas/moves';
 import type { Shape } from '$lib/api/schemas/shapes';
 import type { Study } from '$lib/api/schemas/studies';
@@ -164,6 +165,38 @@ describe('wall thickness', () => {
 		});
 		const wall = kept.constraints.find((c) => c.kind === 'thickness')!;
 		expect(wall).toMatchObject({ index: 1, unit: 'm', limit: least, bound: 'atLeast', kept: true });
+	});
+});
+
+describe('checks of the moved surface', () => {
+	it('say area ratio and self-intersection of every move, and of what a recipe keeps its own', async () => {
+		const { id } = await scene.draw<KeepOut>('keep-outs', { name: 'Lintel', geometry: half(0.72), clearance: 0.001 });
+		const plain = await scene.preview(shape.id, recipe);
+		expect(Object.keys(plain.checks).sort()).toEqual(['areaRatio', 'flipped', 'minAngle', 'selfIntersection']);
+		expect(plain.checks.selfIntersection).toMatchObject({ value: 0, limit: 0, ok: true, hard: true, before: 0 });
+		expect(plain.checks.areaRatio).toMatchObject({ unit: '×', ok: true, hard: false });
+		const { checks } = await scene.preview(shape.id, {
+			...recipe,
+			constraints: [
+				{ kind: 'keepOut', keepOutId: id },
+				{ kind: 'thickness', least: 0.2 },
+				{ kind: 'radius', least: 0.01 }
+			]
+		});
+		expect(checks.keepOut).toMatchObject({ limit: 0.001, unit: 'm', ok: true, hard: true, label: 'Lintel' });
+		expect(checks.keepOut.value).toBeGreaterThanOrEqual(0.001);
+		expect(checks.thickness).toMatchObject({ limit: 0.2, ok: true, hard: true });
+		expect(checks.radius).toMatchObject({ limit: 0.01, ok: true, hard: true });
+	});
+
+	it('a move that would make an edge sharper than its least radius is shown and not stored', async () => {
+		const strict: RecipeInput = { ...recipe, constraints: [{ kind: 'radius', least: 0.9 }] };
+		const { checks } = await scene.preview(shape.id, strict);
+		expect(checks.radius).toMatchObject({ limit: 0.9, ok: false, hard: true });
+		expect(checks.radius.count).toBeGreaterThan(0);
+		const job = await server.job<Job>(await scene.startMove(shape.id, strict), scene.token);
+		expect(job.state).toBe('failed');
+		expect(job.error).toMatchObject({ code: 'check-failed', detail: expect.stringContaining('900 mm') as string });
 	});
 });
 
