@@ -1,4 +1,4 @@
-import { CholeskyDecomposition, Matrix } from 'ml-matrix';
+import { GrowingFactor } from './growing-factor';
 
 /** A squared length below this share of a row's own counts as none: the row says what the active ones say already. */
 const DEPENDENT = 1e-10;
@@ -39,20 +39,32 @@ export function solveActiveSet({ gram, slack, equality, tolerance, guess }: Acti
 	let active: number[] = [];
 	const now = (i: number) => active.reduce((sum, j) => sum + gram[i][j] * multipliers[j], slack[i]);
 
-	const solveActive = (right: number[]): number[] => {
-		if (active.length === 0) return [];
-		const factor = new CholeskyDecomposition(new Matrix(active.map((i) => active.map((j) => gram[i][j]))));
-		return factor.solve(Matrix.columnVector(right)).to1DArray();
+	const factor = new GrowingFactor();
+	/** Of the active rows, in their order. */
+	const bounds = () => active.map((i) => -slack[i]);
+	/** What the active rows make up of row p, in the factor's frame, and the squared length of the rest. */
+	const project = (p: number) => {
+		const y = factor.forward(active.map((i) => gram[i][p]));
+		return { y, apart: y.reduce((rest, v) => rest - v * v, gram[p][p]) };
 	};
-	/** Coefficients of the active rows that make up row p as far as they can. */
-	const coefficients = (p: number): number[] => solveActive(active.map((i) => gram[i][p]));
+	const activate = (p: number, { y, apart }: ReturnType<typeof project>) => {
+		factor.add(y, apart);
+		active.push(p);
+		isActive[p] = true;
+	};
+	const drop = (p: number) => {
+		factor.drop(active.indexOf(p));
+		active = active.filter((j) => j !== p);
+		isActive[p] = false;
+	};
 
 	const add = (p: number): number[] | null => {
 		// An equality is approached from the side on which it lies.
 		const sign = now(p) > 0 ? -1 : 1;
 		for (;;) {
-			const r = coefficients(p);
-			const apart = active.reduce((rest, j, k) => rest - r[k] * gram[j][p], gram[p][p]);
+			const projected = project(p);
+			const { apart } = projected;
+			const r = factor.back(projected.y.slice());
 			let blocking = -1;
 			let t1 = Infinity;
 			active.forEach((j, k) => {
@@ -73,13 +85,11 @@ export function solveActiveSet({ gram, slack, equality, tolerance, guess }: Acti
 			active.forEach((j, k) => (multipliers[j] -= sign * t * r[k]));
 			multipliers[p] += sign * t;
 			if (t2 <= t1) {
-				active.push(p);
-				isActive[p] = true;
+				activate(p, projected);
 				return null;
 			}
 			multipliers[blocking] = 0;
-			isActive[blocking] = false;
-			active = active.filter((j) => j !== blocking);
+			drop(blocking);
 		}
 	};
 
@@ -87,21 +97,17 @@ export function solveActiveSet({ gram, slack, equality, tolerance, guess }: Acti
 	const start = (guessed: boolean[]) => {
 		for (let i = 0; i < m; i++) {
 			if (!guessed[i] || isActive[i]) continue;
-			const r = coefficients(i);
-			const apart = active.reduce((rest, j, k) => rest - r[k] * gram[j][i], gram[i][i]);
-			if (!(apart > APART * gram[i][i])) continue;
-			active.push(i);
-			isActive[i] = true;
+			const projected = project(i);
+			if (projected.apart > APART * gram[i][i]) activate(i, projected);
 		}
 		for (;;) {
-			const solved = solveActive(active.map((i) => -slack[i]));
+			const solved = factor.solve(bounds());
 			const wrong = active.filter((i, k) => !equality[i] && !(solved[k] > 0));
 			if (wrong.length === 0) {
 				active.forEach((i, k) => (multipliers[i] = solved[k]));
 				return;
 			}
-			wrong.forEach((i) => (isActive[i] = false));
-			active = active.filter((i) => isActive[i]);
+			wrong.forEach(drop);
 		}
 	};
 
@@ -130,7 +136,7 @@ export function solveActiveSet({ gram, slack, equality, tolerance, guess }: Acti
 			// It depends on the active ones and is broken by rounding only: those alone, then.
 			multipliers[worst] = 0;
 			skipped.add(worst);
-			const again = solveActive(active.map((i) => -slack[i]));
+			const again = factor.solve(bounds());
 			active.forEach((i, k) => (multipliers[i] = equality[i] ? again[k] : Math.max(0, again[k])));
 		}
 	}

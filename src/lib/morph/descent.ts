@@ -124,7 +124,9 @@ export class Descent {
 			const { base, slope } = this.dual.line(active);
 			const f0 = this.field([0, ...base]);
 			const f1 = this.field([-1, ...slope]);
-			const reach = lengthFactor(f0, f1, step);
+			// Beyond the endless factor F1 is rounding alone: nothing can be reached by it.
+			const found = lengthFactor(f0, f1, step);
+			const reach = found !== null && found <= ENDLESS * start ? found : null;
 			const key = active.map(Number).join('');
 			const length = longest(f0, f1, a);
 			if (

@@ -173,6 +173,20 @@ describe('refusals', () => {
 		expect(error.place).toEqual({ box: 'nose' });
 	});
 
+	it.each([3e-3, 1e-3, 3e-4, 1e-4])(
+		'say that a step is out of reach where places outnumber the unknowns: %f m',
+		(bound) => {
+			const top = prepare([{ centre: [0, 0, 0.6], halfSize: [0.4, 0.4, 0.3], lattice: [3, 3, 3], axes: ['z'] }]);
+			const constraints: MoveConstraint[] = [{ kind: 'displacement', inward: bound, outward: bound }];
+			const error = refusal(() => solve({ constraints }, top));
+			expect(error.code).toBe('step-unreachable');
+			// The length that can be had is near the bound: the surface there faces upward, or nearly.
+			const length = Number(/more than ([\d.e-]+) m/.exec(error.message)?.[1]);
+			expect(length / bound).toBeGreaterThan(1);
+			expect(length / bound).toBeLessThan(1.2);
+		}
+	);
+
 	it('leave nothing behind: the same prepared move solves afterwards as before', () => {
 		const prepared = prepare();
 		const before = solve({}, prepared).displacement;
