@@ -236,6 +236,15 @@ describe('locks', () => {
 		expect((await study.shape(move.shapeId)).recipe?.locks).toMatchObject([
 			{ id: lock.id, patches: ['rear'], blend: 0.4 }
 		]);
+		const part = await study.preview(parent.id, {
+			boxIds: [id],
+			step: 0.02,
+			lockIds: [],
+			constraints: [{ kind: 'volume', bound: 'hold', patches: ['front'] }]
+		});
+		expect(part.constraints).toMatchObject([
+			{ kind: 'volume', patches: ['front'], kept: true, active: true, unit: 'm³' }
+		]);
 		const open = await study.preview(parent.id, { boxIds: [id], step: 0.02, constraints: [], lockIds: [] });
 		expect(open.field).toBeNull();
 		expect(open.weightedChange).toBeLessThan(move.weightedChange);

@@ -1,5 +1,6 @@
 import { MorphError } from './errors';
 import type { GradientCache, Prepared } from './fields';
+import type { VolumeChange } from './volume-change';
 import type { MoveConstraint, MoveObjective, Surface } from './types';
 
 export type LinearBound = Extract<MoveConstraint, { kind: 'volume' | 'objective' }>;
@@ -17,6 +18,17 @@ export interface LinearPart {
 	/** What the value may change by. */
 	change: number;
 	label: string;
+	/** Of a volume: what it is now, and how it changes. */
+	volume: EnclosedVolume | null;
+}
+
+/** The whole body's volume, or a part's. */
+export interface EnclosedVolume {
+	/** m^3 */
+	before: number;
+	/** N x 3 */
+	gradient: Float64Array;
+	change: VolumeChange;
 }
 
 const BOUNDS = ['hold', 'atLeast', 'atMost'];
@@ -30,7 +42,8 @@ export function linearPart(
 	index: number,
 	surface: Surface,
 	gradients: GradientCache,
-	objectives: MoveObjective[]
+	objectives: MoveObjective[],
+	volumeOf: (part: Uint32Array | undefined) => EnclosedVolume
 ): LinearPart {
 	const { bound, value } = constraint;
 	const place = { constraint: index };
@@ -46,7 +59,7 @@ export function linearPart(
 		);
 	}
 	if (constraint.kind === 'volume') {
-		if (!surface.watertight) {
+		if (!surface.watertight && !constraint.part) {
 			throw new MorphError(
 				'mesh-open',
 				'The surface is open, so it encloses no volume that a move could keep.',
@@ -54,10 +67,20 @@ export function linearPart(
 				place
 			);
 		}
-		const gradient = surface.volumeGradient;
-		const limit = value ?? surface.volume;
-		const change = limit - surface.volume;
-		return { constraint, index, prepared: gradients.get(gradient), gradient, limit, change, label: 'volume' };
+		const volume = volumeOf(constraint.part);
+		const { gradient, before } = volume;
+		const limit = value ?? before;
+		const label = constraint.part ? 'volume of a part' : 'volume';
+		return {
+			constraint,
+			index,
+			prepared: gradients.get(gradient),
+			gradient,
+			limit,
+			change: limit - before,
+			label,
+			volume
+		};
 	}
 	const objective = objectives.find((o) => o.id === constraint.objectiveId);
 	if (!objective) {
@@ -71,5 +94,5 @@ export function linearPart(
 	const { gradient } = objective;
 	const limit = value ?? 0;
 	const label = `objective ${objective.id}`;
-	return { constraint, index, prepared: gradients.get(gradient), gradient, limit, change: limit, label };
+	return { constraint, index, prepared: gradients.get(gradient), gradient, limit, change: limit, label, volume: null };
 }

@@ -3,12 +3,14 @@ import { Descent, type DescentConstraint, type Fitted, type Steering } from './d
 import { MorphError } from './errors';
 import { GradientCache, along, checkObjectives, displacementNorms, mix } from './fields';
 import { handLattices } from './hand';
-import { linearPart, type LinearPart } from './linear-constraints';
+import { linearPart, type EnclosedVolume, type LinearPart } from './linear-constraints';
 import { BoxOperator } from './operator';
+import { patchVolume } from './part-volume';
 import { PlaceRounds, placeSets, type PlaceSet } from './places';
 import { reports } from './reports';
 import { LatticeSpace, emptyBox, lockedBox, type MoveSpace } from './space';
 import { applyDisplacement } from './store';
+import { boundsCentre } from './surface';
 import { SurfaceSpace } from './surface-space';
 import { onPlane, planeNormal, tieBoxes, type Tie } from './symmetry';
 import { ReducedSystem, combine, dot } from './system';
@@ -28,6 +30,8 @@ import { VolumeChange, nearRoot } from './volume-change';
 const DEFAULT_EPS = 1e-6;
 /** An inequality on the volume is restored when the curved surface breaks it by more than this share. */
 const VOLUME_SLACK = 1e-13;
+/** Passes over several held volumes. */
+const VOLUME_PASSES = 4;
 const MAX_ROUNDS = 60;
 /** Rounds without a smaller violation after which the constraints are taken to be in conflict. */
 const STALLED_ROUNDS = 12;
@@ -126,6 +130,7 @@ class Move implements PreparedMove {
 	readonly path: 'direct' | 'moments';
 	private readonly gradients: GradientCache;
 	private volumes: VolumeChange | null = null;
+	private readonly parts = new WeakMap<Uint32Array, EnclosedVolume>();
 
 	/** @param lattices null in surface mode */
 	constructor(
@@ -140,6 +145,20 @@ class Move implements PreparedMove {
 		this.unknowns = space.unknowns;
 		this.path = lattices?.operators.some((op) => op.path === 'moments') ? 'moments' : 'direct';
 		this.gradients = new GradientCache(space);
+	}
+
+	/** The whole body's volume, or that of a part bounded by some triangles; kept by the identity of the list. */
+	private volumeOf(part: Uint32Array | undefined): EnclosedVolume {
+		const { surface } = this;
+		if (!part) return { before: surface.volume, gradient: surface.volumeGradient, change: this.volumeChange };
+		let known = this.parts.get(part);
+		if (!known) {
+			const { positions, triangles, volume, gradient } = patchVolume(surface.positions, surface.triangles, part);
+			const closed = { positions, triangles, origin: boundsCentre(positions) };
+			known = { before: volume, gradient, change: new VolumeChange(closed, this.moved) };
+			this.parts.set(part, known);
+		}
+		return known;
 	}
 
 	/** The control points' displacements made by hand, images filled in. */
@@ -229,7 +248,7 @@ class Move implements PreparedMove {
 	private linearParts(constraints: MoveConstraint[], objectives: MoveObjective[]): LinearPart[] {
 		return constraints.flatMap((c, index) => {
 			if (c.kind === 'volume' || c.kind === 'objective') {
-				return [linearPart(c, index, this.surface, this.gradients, objectives)];
+				return [linearPart(c, index, this.surface, this.gradients, objectives, (part) => this.volumeOf(part))];
 			}
 			if (c.kind === 'displacement' || c.kind === 'keepOut' || c.kind === 'thickness') return [];
 			throw new MorphError(
@@ -280,9 +299,9 @@ class Move implements PreparedMove {
 			const { worst, labels } = rounds.next(positions, computed, fitted.active.slice(base.length));
 			if (worst === 0) return { fitted, coefficients, descent, rounds };
 			// The next round's linear volume takes in how this one's surface curves, so that restoring it moves nothing much.
-			linear.forEach(({ constraint, gradient, change }, i) => {
-				if (constraint.kind !== 'volume') return;
-				const curved = this.volumeChange.cubic(fitted.displacement, null)[0];
+			linear.forEach(({ volume, gradient, change }, i) => {
+				if (!volume) return;
+				const curved = volume.change.cubic(fitted.displacement, null)[0];
 				base[i].change = change - curved + along(gradient, this.moved, computed);
 			});
 			if (worst < 0.7 * best) {
@@ -311,29 +330,33 @@ class Move implements PreparedMove {
 	 */
 	private restoreVolume(linear: LinearPart[], descent: Descent, fitted: Fitted, coefficients: number[]): void {
 		const { displacement, active } = fitted;
-		linear.forEach(({ constraint, index, limit }, i) => {
-			if (constraint.kind !== 'volume') return;
-			const target = limit - this.surface.volume;
-			if (!active[i]) {
-				const [change] = this.volumeChange.cubic(displacement, null);
-				const slack = VOLUME_SLACK * Math.abs(this.surface.volume);
-				if (constraint.bound === 'atLeast' ? change >= target - slack : change <= target + slack) return;
-				active[i] = true;
+		const volumes = linear.map((part, i) => ({ ...part, i })).filter(({ volume }) => volume);
+		// A correction of one leaves the others alone to first order only: several settle in a few passes.
+		for (let pass = 0; pass < (volumes.length > 1 ? VOLUME_PASSES : 1); pass++) {
+			for (const { constraint, index, limit, volume, i } of volumes) {
+				const { change, before } = volume as EnclosedVolume;
+				const target = limit - before;
+				if (!active[i]) {
+					const [now] = change.cubic(displacement, null);
+					const slack = VOLUME_SLACK * Math.abs(before);
+					if (constraint.bound === 'atLeast' ? now >= target - slack : now <= target + slack) continue;
+					active[i] = true;
+				}
+				const shares = descent.dual.correction(i, active);
+				const correction = descent.field([0, ...shares]);
+				const t = nearRoot(change.cubic(displacement, correction), target);
+				if (t === null || Math.abs(t) * displacementNorms(correction).max > displacementNorms(displacement).max) {
+					throw new MorphError(
+						'constraint-conflict',
+						'The volume cannot be restored after the move.',
+						'Take a shorter step.',
+						{ constraint: index }
+					);
+				}
+				for (let k = 0; k < displacement.length; k++) displacement[k] += t * correction[k];
+				shares.forEach((s, k) => (coefficients[k + 1] += t * s));
 			}
-			const shares = descent.dual.correction(i, active);
-			const correction = descent.field([0, ...shares]);
-			const t = nearRoot(this.volumeChange.cubic(displacement, correction), target);
-			if (t === null || Math.abs(t) * displacementNorms(correction).max > displacementNorms(displacement).max) {
-				throw new MorphError(
-					'constraint-conflict',
-					'The volume cannot be restored after the move.',
-					'Take a shorter step.',
-					{ constraint: index }
-				);
-			}
-			for (let k = 0; k < displacement.length; k++) displacement[k] += t * correction[k];
-			shares.forEach((s, k) => (coefficients[k + 1] += t * s));
-		});
+		}
 	}
 
 	/** By report key: whether it binds, its price, and at how many places. */
@@ -390,7 +413,6 @@ class Move implements PreparedMove {
 				linear,
 				sets,
 				predicted,
-				volumeAfter,
 				prices
 			})
 		};

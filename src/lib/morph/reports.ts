@@ -1,7 +1,7 @@
 import type { LinearPart } from './linear-constraints';
 import { worstPlace, type PlaceSet } from './places';
 import { applyDisplacement } from './store';
-import type { Bound, ConstraintReport, Surface } from './types';
+import type { Bound, ConstraintReport, MoveConstraint, Surface } from './types';
 
 /** What an equality or a bound may be off by, relative to the volume, and to the largest change of an objective. */
 const VOLUME_KEPT = 1e-9;
@@ -26,22 +26,22 @@ export function reports(input: {
 	linear: LinearPart[];
 	sets: PlaceSet[];
 	predicted: { objectiveId: string; change: number }[];
-	volumeAfter: number;
 	/** null: a move by hand alone, where nothing binds. */
 	prices: { linear: Price[]; sets: Price[] } | null;
 }): ConstraintReport[] {
-	const { surface, linear, sets, predicted, volumeAfter, prices } = input;
+	const { surface, linear, sets, predicted, prices } = input;
 	const none: Price = { active: false, price: 0, places: 0 };
 	const largest = Math.max(...predicted.map((p) => Math.abs(p.change)));
-	const ofLinear = linear.map(({ constraint, index, limit }, i): ConstraintReport => {
+	const ofLinear = linear.map(({ constraint, index, limit, volume }, i): ConstraintReport => {
 		const { kind, bound } = constraint;
 		const { active, price } = prices?.linear[i] ?? none;
-		if (kind === 'volume') {
-			const before = surface.volume;
-			const kept = keeps(volumeAfter, bound, limit, VOLUME_KEPT * Math.abs(limit));
-			return { index, kind, bound, limit, before, after: volumeAfter, kept, active, price };
+		if (volume) {
+			const { before } = volume;
+			const after = before + volume.change.cubic(input.displacement, null)[0];
+			const kept = keeps(after, bound, limit, VOLUME_KEPT * Math.abs(limit));
+			return { index, kind, bound, limit, before, after, kept, active, price };
 		}
-		const { objectiveId } = constraint;
+		const { objectiveId } = constraint as Extract<MoveConstraint, { kind: 'objective' }>;
 		const after = predicted.find((p) => p.objectiveId === objectiveId)?.change ?? 0;
 		const kept = keeps(after, bound, limit, OBJECTIVE_KEPT * (Math.abs(limit) + largest));
 		return { index, kind, objectiveId, bound, limit, before: 0, after, kept, active, price };

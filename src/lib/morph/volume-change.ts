@@ -35,7 +35,7 @@ export class VolumeChange {
 	private readonly slot: Uint32Array;
 
 	constructor(
-		private readonly surface: Surface,
+		private readonly surface: Pick<Surface, 'positions' | 'triangles' | 'origin'>,
 		moved: Uint32Array
 	) {
 		const n = surface.positions.length / 3;

@@ -1,6 +1,7 @@
 import { describe, expect, it } from 'vitest';
 import {
 	makeSurface,
+	patchVolume,
 	prepareMove,
 	volumeOf,
 	type MoveConstraint,
@@ -128,6 +129,37 @@ describe('constraints at places', () => {
 		expect(() => gain([{ kind: 'displacement', inward: 0.001, outward: 0.001 }])).toThrow(
 			/step of 0\.05 m cannot be reached.*displacement outward/
 		);
+	});
+});
+
+describe('volumes of parts', () => {
+	it('are held exactly beside that of the whole, while a free one changes', () => {
+		const front: number[] = [];
+		for (let t = 0; t < surface.triangles.length / 3; t++) {
+			const x = [0, 1, 2].reduce((sum, k) => sum + surface.positions[3 * surface.triangles[3 * t + k]], 0);
+			if (x > 0.3) front.push(t);
+		}
+		const part = Uint32Array.from(front);
+		const after = ({ moved, displacement }: ReturnType<typeof gain>) => {
+			const { positions, triangles } = patchVolume(surface.positions, surface.triangles, part);
+			moved.forEach((v, i) => {
+				for (let d = 0; d < 3; d++) positions[3 * v + d] += displacement[3 * i + d];
+			});
+			return volumeOf(positions, triangles);
+		};
+		const before = patchVolume(surface.positions, surface.triangles, part).volume;
+		const whole: MoveConstraint = { kind: 'volume', bound: 'hold' };
+		const free = gain([whole]);
+		expect(Math.abs(after(free) / before - 1)).toBeGreaterThan(1e-5);
+		const held = gain([whole, { kind: 'volume', bound: 'hold', part }]);
+		expect(Math.abs(after(held) / before - 1)).toBeLessThan(1e-12);
+		expect(Math.abs(held.volumeAfter / held.volumeBefore - 1)).toBeLessThan(1e-12);
+		expect(held.constraints.map((c) => [c.kept, c.active])).toEqual([
+			[true, true],
+			[true, true]
+		]);
+		expect(held.constraints[1].before).toBeCloseTo(before, 12);
+		expect(held.predictedWeighted).toBeGreaterThan(free.predictedWeighted);
 	});
 });
 

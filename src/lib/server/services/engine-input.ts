@@ -87,7 +87,15 @@ async function engineConstraint(
 	switch (request.kind) {
 		case 'volume': {
 			const { kind, bound, value, patches } = request;
-			return { kind, bound, value, part: patches && patchTriangles(patches, parent.mesh.patches) };
+			// The same list again: the engine keeps a part's volume by it.
+			const part =
+				patches &&
+				(await cache.kept(
+					`part ${parent.id} ${JSON.stringify(patches)}`,
+					() => patchTriangles(patches, parent.mesh.patches),
+					parent.mesh.triangles.byteLength
+				));
+			return { kind, bound, value, part };
 		}
 		case 'objective': {
 			// An absolute bound becomes one on the change.

@@ -112,14 +112,6 @@ function refuseUnsupported(recipe: Recipe): void {
 			}
 		);
 	}
-	const missing = recipe.constraints.findIndex(MISSING);
-	if (missing >= 0) {
-		const detail = 'Moves that keep the volume of a part are not available yet.';
-		throw new AppError('unsupported', detail, {
-			errors: [{ pointer: `/constraints/${missing}`, detail }],
-			mend: 'Leave the constraint out.'
-		});
-	}
 	const place = recipe.constraints.findIndex(({ kind }) => PLACE_KINDS.includes(kind));
 	if (recipe.mode === 'surface' && place >= 0) {
 		const detail = 'In surface mode a move keeps volumes and objectives; bounds at places need a lattice.';
@@ -129,9 +121,6 @@ function refuseUnsupported(recipe: Recipe): void {
 		});
 	}
 }
-
-/** Constraints that the engine has no kernel for yet. */
-const MISSING = ({ kind, ...constraint }: ConstraintRequest) => kind === 'volume' && 'patches' in constraint;
 
 const PLACE_KINDS: ConstraintRequest['kind'][] = ['displacement', 'keepOut', 'thickness'];
 
