@@ -29,6 +29,15 @@ export function densityUnit(objective: Objective | undefined): string {
 	return `${unit && unit !== '1' ? `${unit} ` : ''}per mm per m²`;
 }
 
+/** The usual reference for a least radius, metres; it is suggested, never set by itself. */
+export const leastRadius = {
+	usual: 0.0025,
+	source: 'UN R26',
+	caution:
+		'Checked, not steered by. UN Regulation No. 26 asks for 2.5 mm on the outside of cars, where a 100 mm sphere can touch. ' +
+		'Which rule applies here is for the local codes and licensed practice to say.'
+};
+
 export const checkNames: Record<string, string> = {
 	flipped: 'Flipped triangles',
 	minAngle: 'Smallest angle',
