@@ -64,7 +64,7 @@ export interface PreparedKeepOut {
 }
 
 export interface Penetration {
-	/** Smallest signed distance found, metres; null when no vertex lies within a thousand times the size of the surface. */
+	/** Smallest signed distance found, metres; null without a chosen triangle. */
 	distance: number | null;
 	/** Where it was found. */
 	position: [number, number, number] | null;
@@ -270,27 +270,33 @@ class KeepOut implements PreparedKeepOut {
 		tolerance: number,
 		sag: number
 	): Penetration {
-		const { vertices, holder, size } = verticesOf(positions, triangles, chosen);
+		const { field, clearance } = this;
+		const sign = this.side === 'outside' ? 1 : -1;
 		const result: Penetration = { distance: null, position: null, triangle: -1, vertices: 0, cuts: 0 };
-		const constraint = this.place(vertices);
-		// The margin grows until something is found: the nearest is then among it.
-		let rows = constraint.rows(positions, tolerance);
-		for (let within = size / 64; rows.count === 0 && within < 1000 * size; within *= 8) {
-			rows = constraint.rows(positions, within);
-		}
+		const seen = new Uint8Array(positions.length / 3);
 		const broken = new Set<number>();
-		for (let k = 0; k < rows.count; k++) {
-			if (rows.slack[k] < -tolerance) broken.add(rows.vertices[k]);
-			if (result.distance !== null && rows.values[k] >= result.distance) continue;
-			const v = rows.vertices[k];
-			result.distance = rows.values[k];
-			result.triangle = holder[v];
-			result.position = [positions[3 * v], positions[3 * v + 1], positions[3 * v + 2]];
+		// Nothing farther than the nearest so far matters, unless it lacks clearance: that keeps the search short.
+		let nearest = Infinity;
+		for (let i = 0; i < chosen.length; i++) {
+			for (let k = 0; k < 3; k++) {
+				const v = triangles[3 * chosen[i] + k];
+				if (seen[v]) continue;
+				seen[v] = 1;
+				const limit = Math.max(nearest, clearance);
+				const [x, y, z] = [positions[3 * v], positions[3 * v + 1], positions[3 * v + 2]];
+				field.at(x, y, z, sign > 0 ? -Infinity : -limit, sign > 0 ? limit : Infinity);
+				const d = sign * field.distance;
+				if (d < clearance - tolerance) broken.add(v);
+				if (!(d < nearest)) continue;
+				nearest = d;
+				result.distance = d;
+				result.triangle = chosen[i];
+				result.position = [x, y, z];
+			}
 		}
 		result.vertices = broken.size;
 		const tree = this.surfaceTree();
 		if (tree) {
-			const sign = this.side === 'outside' ? 1 : -1;
 			for (const cut of cutsBetween(positions, triangles, chosen, broken, tree, this.field, sign, sag)) {
 				result.cuts++;
 				if (result.distance !== null && cut.distance >= result.distance) continue;
@@ -301,33 +307,6 @@ class KeepOut implements PreparedKeepOut {
 		}
 		return result;
 	}
-}
-
-/** The chosen triangles' vertices, ascending; one of its triangles for each; the extent of them all. */
-function verticesOf(positions: Float64Array, triangles: Uint32Array, chosen: Uint32Array) {
-	const holder = new Int32Array(positions.length / 3).fill(-1);
-	let count = 0;
-	for (let i = 0; i < chosen.length; i++) {
-		for (let k = 0; k < 3; k++) {
-			const v = triangles[3 * chosen[i] + k];
-			if (holder[v] < 0) count++;
-			holder[v] = chosen[i];
-		}
-	}
-	const vertices = new Uint32Array(count);
-	const low = [Infinity, Infinity, Infinity];
-	const high = [-Infinity, -Infinity, -Infinity];
-	let at = 0;
-	for (let v = 0; v < holder.length; v++) {
-		if (holder[v] < 0) continue;
-		vertices[at++] = v;
-		for (let d = 0; d < 3; d++) {
-			low[d] = Math.min(low[d], positions[3 * v + d]);
-			high[d] = Math.max(high[d], positions[3 * v + d]);
-		}
-	}
-	const size = count > 0 ? Math.hypot(high[0] - low[0], high[1] - low[1], high[2] - low[2]) : 1;
-	return { vertices, holder, size: size || 1 };
 }
 
 /** Twelve triangles on the box. */
