@@ -130,4 +130,26 @@ describe('places in random boxes', () => {
 		expect(solved).toBeGreaterThan(15);
 		expect(touched).toBeGreaterThan(0);
 	}, 240_000);
+
+	// A bound a little below the step: the violation wanders from place to place before it falls.
+	it('are kept where many bind one after the other', () => {
+		const box = makeBox({
+			centre: [1.3, 0, 0.1],
+			halfSize: [1.2, 1, 0.9],
+			lattice: [5, 5, 5],
+			held: { u0: 2, u1: 0, v0: 0, v1: 0, w0: 0, w1: 0 }
+		});
+		const bound = 0.9 * STEP;
+		const move = prepareMove(surface, [box], { smoothing: 0.05 }).solve({
+			objectives: [{ id: 'drag', gradient: gradient([3, 2, 1], 0), sense: 'minimise', weight: 1 }],
+			step: STEP,
+			constraints: [
+				{ kind: 'volume', bound: 'hold' },
+				{ kind: 'displacement', inward: bound, outward: bound }
+			]
+		});
+		expect(move.constraints.every((c) => c.kept)).toBe(true);
+		expect(move.constraints.filter((c) => c.active).length).toBeGreaterThan(1);
+		expect(move.maxDisplacement).toBeGreaterThan(bound);
+	});
 });
