@@ -25,6 +25,9 @@ export class KeepingState {
 	meshes = $state.raw<Record<string, KeepOutMesh>>({});
 	problem = $state.raw<ApiProblem | null>(null);
 	saving = $state(0);
+	/** A keep-out is being dragged: it is stored when it is let go. */
+	dragging = $state(false);
+	#gesture: KeepOut | null = null;
 	/** Saves of one thing follow each other: each is made on the version that the one before gave. */
 	readonly #turns: Record<string, Promise<void>> = {};
 	readonly #asked = new Set<string>();
@@ -44,7 +47,7 @@ export class KeepingState {
 	);
 
 	adopt({ keepOuts, locks }: Pick<Study, 'keepOuts' | 'locks'>) {
-		if (this.saving > 0) return;
+		if (this.saving > 0 || this.dragging) return;
 		this.keepOuts = keepOuts;
 		this.locks = locks;
 		for (const keepOut of keepOuts) if (keepOut.geometry.kind === 'mesh') void this.#fetchMesh(keepOut.id);
@@ -84,22 +87,45 @@ export class KeepingState {
 		this.selected = { kind: 'keepOut', id: made.id };
 	}
 
-	async addLock(body: Pick<LockCreate, 'patches' | 'painted'>) {
+	async addLock(body: Pick<LockCreate, 'patches' | 'painted'>): Promise<Lock> {
 		const name = this.freeName('Lock', this.locks);
 		const made = await api.createLock({ id: this.studyId, body: { name, blend: 0, ...body } });
 		this.#put('lock', made);
 		this.selected = { kind: 'lock', id: made.id };
+		return made;
 	}
 
 	changeKeepOut(id: string, patch: KeepOutPatch) {
 		const before = this.keepOuts.find((k) => k.id === id);
 		if (!before) return;
 		this.#show('keepOut', { ...before, ...patch });
+		if (this.#gesture?.id === id) return;
 		void this.#save(id, async () => {
 			const { name, side, clearance, geometry, version } = this.keepOuts.find((k) => k.id === id)!;
 			const body = { name, side, clearance, version, ...(geometry.kind === 'mesh' ? {} : { geometry }) };
 			this.#put('keepOut', await api.replaceKeepOut({ id, body }));
 		});
+	}
+
+	/** Begins a drag: what follows until `end` is one version. */
+	begin(keepOut: KeepOut) {
+		this.#gesture = keepOut;
+		this.dragging = true;
+	}
+
+	end() {
+		const before = this.#gesture;
+		this.#gesture = null;
+		this.dragging = false;
+		const now = before && this.keepOuts.find((k) => k.id === before.id);
+		if (now && now !== before && now.geometry.kind !== 'mesh') this.changeKeepOut(now.id, { geometry: now.geometry });
+	}
+
+	/** Ends a drag as if it had not been. */
+	abandon() {
+		if (this.#gesture) this.#show('keepOut', this.#gesture);
+		this.#gesture = null;
+		this.dragging = false;
 	}
 
 	changeLock(id: string, patch: Partial<LockCreate>) {

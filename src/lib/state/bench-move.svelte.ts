@@ -141,7 +141,7 @@ export class MoveState {
 
 	/** To be read by an effect: changes whenever another preview is due. Not while a handle is held: the server has the old box. */
 	get due(): string | null {
-		return this.boxes.dragging ? null : this.#key;
+		return this.boxes.dragging || this.keeping.dragging ? null : this.#key;
 	}
 
 	schedule() {
@@ -156,7 +156,7 @@ export class MoveState {
 	/** Previews now. A preview on its way is dropped. */
 	async ask() {
 		const shape = this.shape();
-		if (!shape || this.obstacle || this.boxes.dragging) return;
+		if (!shape || this.obstacle || this.due === null) return;
 		clearTimeout(this.#timer);
 		this.#abort?.abort();
 		const abort = (this.#abort = new AbortController());

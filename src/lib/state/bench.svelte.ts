@@ -15,9 +15,10 @@ import type {
 	Share,
 	Vec3
 } from '$lib/workers/display-protocol';
-import { designBox, roundTo, shownMove, type Ray } from './bench-geometry';
+import { designBox, lockedTriangles, roundTo, shownMove, type Ray } from './bench-geometry';
 import { BoxesState } from './bench-boxes.svelte';
 import { KeepingState } from './bench-keeping.svelte';
+import { PaintState } from './bench-paint.svelte';
 import { MoveState, type Preview } from './bench-move.svelte';
 
 export type Layer = FieldName | 'none';
@@ -72,6 +73,9 @@ export class BenchState {
 	readonly boxes: BoxesState;
 	readonly keeping: KeepingState;
 	readonly move: MoveState;
+	readonly paint: PaintState;
+	/** By vertex, how much of a move the kept locks take away (1: all); null: no locks. */
+	spared = $state.raw<Float32Array | null>(null);
 	readonly #worker = new DisplayWorker();
 	#loads = 0;
 	#sharing = false;
@@ -96,6 +100,7 @@ export class BenchState {
 			this.keeping,
 			(preview) => void this.#showMove(preview)
 		);
+		this.paint = new PaintState(this.keeping, (input) => this.#worker.ask('reach', input));
 	}
 
 	readonly editable = $derived(this.study?.role === 'engineer');
@@ -165,7 +170,8 @@ export class BenchState {
 			if (load !== this.#loads) return;
 			this.fields = {};
 			this.histogram = null;
-			this.pick = this.share = null;
+			this.pick = this.share = this.spared = null;
+			this.paint.end();
 			this.mesh = mesh;
 			this.meshOf = shape.id;
 			if (!this.#settled) this.#settle(mesh);
@@ -244,6 +250,22 @@ export class BenchState {
 		}
 	}
 
+	/** Where locks take the move away, wholly and over their blend distance. */
+	async spare() {
+		const { mesh, shape } = this;
+		const locks = this.keeping.locks.filter((l) => this.move.locks(l.id));
+		if (!mesh || !shape || locks.length === 0) {
+			this.spared = null;
+			return;
+		}
+		const due = ++this.#sparing;
+		const spared = await this.#worker.ask('spared', {
+			locks: locks.map((lock) => ({ triangles: lockedTriangles([lock], shape), blend: lock.blend }))
+		});
+		if (due === this.#sparing && this.mesh === mesh) this.spared = spared;
+	}
+	#sparing = 0;
+
 	/** A new box around a place of the surface, sized from the shape. */
 	async addBox(around: Vec3 | null): Promise<Box | null> {
 		const { mesh, study } = this;
@@ -284,6 +306,7 @@ export class BenchState {
 		const { min, max } = mesh.bounds;
 		const diagonal = Math.hypot(max[0] - min[0], max[1] - min[1], max[2] - min[2]);
 		const one = (x: number) => Number(x.toPrecision(1));
+		this.paint.radius = one(diagonal * 0.02);
 		const newest = [...this.shapes].reverse().find((s) => s.step !== null);
 		this.move.step = this.shape?.step ?? newest?.step ?? one(diagonal * 0.002);
 		this.move.smoothing = this.shape?.smoothing ?? newest?.smoothing ?? one(diagonal * 0.012);

@@ -4,8 +4,9 @@
  */
 import { BufferAttribute, BufferGeometry, DoubleSide, Ray, Vector3 } from 'three';
 import { MeshBVH } from 'three-mesh-bvh';
-import { embed, latticeMotion, toMetres, type DesignBox, type LatticeMotion } from '$lib/morph';
+import { embed, latticeMotion, lockWeights, toMetres, type DesignBox, type LatticeMotion } from '$lib/morph';
 import { along, averaged, boundsOf, histogramOf, scaled, spreadOf, vertexNormals } from './display-kernels';
+import { SurfaceReach } from './paint-kernels';
 import type {
 	DisplayCall,
 	DisplayField,
@@ -15,6 +16,7 @@ import type {
 	DisplayOutput,
 	FieldName,
 	Pick,
+	Reach,
 	Share,
 	Vec3,
 	VertexField
@@ -50,6 +52,7 @@ export class DisplayModel {
 	#fields = new Map<FieldName, Float32Array>();
 	#motions = new Map<string, LatticeMotion>();
 	#trees: { rest: MeshBVH | null; moved: MeshBVH | null } = { rest: null, moved: null };
+	#reach: SurfaceReach | null = null;
 
 	readonly calls: { [K in DisplayCall]: (input: DisplayInput<K>) => DisplayOutput<K> } = {
 		load: ({ positions, triangles, metresPerUnit }) => this.#load(positions, triangles, metresPerUnit),
@@ -66,7 +69,12 @@ export class DisplayModel {
 			return values ? histogramOf(values, this.#surface.areas, extent, bins) : new Float32Array(bins);
 		},
 		share: ({ box, field }) => this.#share(box, field),
-		pick: ({ origin, direction, on, fields }) => this.#pick(origin, direction, on, fields)
+		pick: ({ origin, direction, on, fields }) => this.#pick(origin, direction, on, fields),
+		reach: (input) => this.#paint(input),
+		spared: ({ locks }) => {
+			const { exact, triangles } = this.#surface;
+			return Float32Array.from(lockWeights(exact, triangles, locks), (weight) => 1 - weight);
+		}
 	};
 
 	get #surface(): Loaded {
@@ -91,6 +99,7 @@ export class DisplayModel {
 		this.#fields.clear();
 		this.#motions.clear();
 		this.#trees = { rest: null, moved: null };
+		this.#reach = null;
 		return {
 			positions: positions.slice(),
 			normals: normals.slice(),
@@ -199,7 +208,7 @@ export class DisplayModel {
 		return { area: within / area, vertices: inside.length, ofField: whole > 0 ? part / whole : null };
 	}
 
-	#pick(origin: Vec3, direction: Vec3, on: 'rest' | 'moved', fields: FieldName[]): Pick | null {
+	#hit(origin: Vec3, direction: Vec3, on: 'rest' | 'moved') {
 		const { triangles, positions: rest } = this.#surface;
 		const which = on === 'moved' && this.#moved ? 'moved' : 'rest';
 		const positions = which === 'moved' && this.#moved ? this.#moved.positions : rest;
@@ -207,20 +216,46 @@ export class DisplayModel {
 		const hit = tree.raycastFirst(new Ray(new Vector3(...origin), new Vector3(...direction)), DoubleSide);
 		if (!hit || hit.faceIndex == null || !hit.face) return null;
 		const triangle = hit.faceIndex;
-		const at = [0, 1, 2].map((k) => triangles[3 * triangle + k]);
+		const corners = [0, 1, 2].map((k) => triangles[3 * triangle + k]);
 		const share = barycentric(
 			hit.point,
-			at.map((v) => new Vector3().fromArray(positions, 3 * v))
+			corners.map((v) => new Vector3().fromArray(positions, 3 * v))
 		);
+		return { point: hit.point, normal: hit.face.normal, triangle, corners, share };
+	}
+
+	#pick(origin: Vec3, direction: Vec3, on: 'rest' | 'moved', fields: FieldName[]): Pick | null {
+		const hit = this.#hit(origin, direction, on);
+		if (!hit) return null;
+		const { point, normal, triangle, corners, share } = hit;
 		return {
-			point: [hit.point.x, hit.point.y, hit.point.z],
-			normal: [hit.face.normal.x, hit.face.normal.y, hit.face.normal.z],
+			point: [point.x, point.y, point.z],
+			normal: [normal.x, normal.y, normal.z],
 			triangle,
 			values: fields.map((name) => {
 				const values = this.#fields.get(name);
-				return values ? share.reduce((sum, w, k) => sum + w * values[at[k]], 0) : null;
+				return values ? share.reduce((sum, w, k) => sum + w * values[corners[k]], 0) : null;
 			})
 		};
+	}
+
+	#paint(input: Reach): Uint32Array {
+		const { exact, triangles } = this.#surface;
+		const reach = (this.#reach ??= new SurfaceReach(exact, triangles));
+		if (input.kind === 'box') return reach.inBox(input.box);
+		const reached = new Set<number>();
+		for (const { origin, direction } of input.sights) {
+			const hit = this.#hit(origin, direction, input.on);
+			if (!hit || (input.kind === 'fill' && reached.has(hit.triangle))) continue;
+			// A moved surface is painted where its triangles lie at rest.
+			const rest = [0, 1, 2].map((k) => hit.share.reduce((sum, w, i) => sum + w * exact[3 * hit.corners[i] + k], 0));
+			const found =
+				input.kind === 'brush'
+					? reach.brush(hit.triangle, rest as Vec3, input.radius)
+					: reach.fill(hit.triangle, input.angle);
+			for (const t of found) reached.add(t);
+		}
+		return Uint32Array.from(reached).sort();
 	}
 }
 

@@ -65,6 +65,18 @@ export interface Pick {
 
 export type FieldName = 'map' | 'move' | 'parent';
 
+export interface Sight {
+	origin: Vec3;
+	direction: Vec3;
+}
+
+/** What a stroke of painting asks for. `on`: the surface that is hit; triangles are the same on both. */
+export type Reach =
+	| { kind: 'brush'; sights: Sight[]; on: 'rest' | 'moved'; radius: number }
+	/** `angle`: radians between neighbours. */
+	| { kind: 'fill'; sights: Sight[]; on: 'rest' | 'moved'; angle: number }
+	| { kind: 'box'; box: DesignBox };
+
 /** Displacement of some vertices. */
 export interface VertexField {
 	/** Ascending ids. */
@@ -95,6 +107,10 @@ export interface DisplayCalls {
 	share: [{ box: DesignBox; field: FieldName | null }, Share];
 	/** `on`: the surface that is hit. */
 	pick: [{ origin: Vec3; direction: Vec3; on: 'rest' | 'moved'; fields: FieldName[] }, Pick | null];
+	/** Ids of the triangles reached, ascending. */
+	reach: [Reach, Uint32Array];
+	/** By vertex, how much of a move locks take away: 1 all of it, 0 nothing. `blend` in metres. */
+	spared: [{ locks: { triangles: Uint32Array; blend: number }[] }, Float32Array];
 }
 
 export type DisplayCall = keyof DisplayCalls;

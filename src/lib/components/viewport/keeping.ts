@@ -24,6 +24,8 @@ export interface KeepingDrawing {
 	symmetry: Plane | null;
 	/** Triangles that a move leaves alone, uint32 ids. */
 	locked: Uint32Array;
+	/** By vertex, how much of a move is taken away there: 1 on locked triangles, falling to 0 over the blend distance. */
+	spared: Float32Array | null;
 }
 
 const ALPHA = { fill: 0.1, chosen: 0.2, line: 0.55, unused: 0.25 };
@@ -32,7 +34,7 @@ const ALPHA = { fill: 0.1, chosen: 0.2, line: 0.55, unused: 0.25 };
 export class Keeping {
 	readonly group = new Group();
 
-	draw({ keepOuts, symmetry, locked }: KeepingDrawing, surface: DisplayMesh | null, palette: Palette) {
+	draw({ keepOuts, symmetry, locked, spared }: KeepingDrawing, surface: DisplayMesh | null, palette: Palette) {
 		this.clear();
 		if (!surface) return;
 		const { min, max } = surface.bounds;
@@ -48,7 +50,8 @@ export class Keeping {
 			const sheet = sheetAt(symmetry.point, symmetry.normal, middle, 0.66 * size);
 			this.#add({ ...sheet, lines: true }, palette, 0, 0.35);
 		}
-		if (locked.length > 0) this.#lock(locked, surface, palette);
+		if (locked.length > 0) this.group.add(lockedMesh(locked, surface, palette));
+		if (spared && spared.length === surface.positions.length / 3) this.group.add(sparedMesh(spared, surface, palette));
 	}
 
 	#add({ geometry, at, turned, lines }: Body, palette: Palette, fill: number, line: number) {
@@ -76,25 +79,6 @@ export class Keeping {
 		this.group.add(edges);
 	}
 
-	#lock(locked: Uint32Array, surface: DisplayMesh, palette: Palette) {
-		const index = new Uint32Array(3 * locked.length);
-		locked.forEach((t, i) => index.set(surface.triangles.subarray(3 * t, 3 * t + 3), 3 * i));
-		const geometry = new BufferGeometry();
-		geometry.setAttribute('position', new BufferAttribute(surface.positions, 3));
-		geometry.setIndex(new BufferAttribute(index, 1));
-		const material = new MeshBasicMaterial({
-			color: palette.ink,
-			transparent: true,
-			opacity: 0.32,
-			side: DoubleSide,
-			depthWrite: false
-		});
-		const mesh = new Mesh(geometry, material);
-		mesh.frustumCulled = false;
-		mesh.renderOrder = 1;
-		this.group.add(mesh);
-	}
-
 	clear() {
 		for (const child of [...this.group.children] as (Mesh | LineSegments)[]) {
 			this.group.remove(child);
@@ -102,6 +86,55 @@ export class Keeping {
 			(child.material as MeshBasicMaterial).dispose();
 		}
 	}
+}
+
+const OVERLAY = { locked: 0.2, spared: 0.4 };
+
+/** Triangles darkened where they lie; the surface's own arrays are borrowed. */
+export function lockedMesh(locked: Uint32Array, surface: DisplayMesh, palette: Palette): Mesh {
+	const index = new Uint32Array(3 * locked.length);
+	locked.forEach((t, i) => index.set(surface.triangles.subarray(3 * t, 3 * t + 3), 3 * i));
+	return overlay(index, surface, palette, OVERLAY.locked, null);
+}
+
+/** The soft edge of the locks: as dark at a vertex as the move is taken away there. */
+function sparedMesh(spared: Float32Array, surface: DisplayMesh, palette: Palette): Mesh {
+	const index: number[] = [];
+	const { triangles } = surface;
+	for (let e = 0; e < triangles.length; e += 3) {
+		const [a, b, c] = [triangles[e], triangles[e + 1], triangles[e + 2]];
+		if (spared[a] > 0 || spared[b] > 0 || spared[c] > 0) index.push(a, b, c);
+	}
+	return overlay(Uint32Array.from(index), surface, palette, OVERLAY.spared, spared);
+}
+
+function overlay(
+	index: Uint32Array,
+	surface: DisplayMesh,
+	palette: Palette,
+	opacity: number,
+	alpha: Float32Array | null
+): Mesh {
+	const geometry = new BufferGeometry();
+	geometry.setAttribute('position', new BufferAttribute(surface.positions, 3));
+	geometry.setIndex(new BufferAttribute(index, 1));
+	const material = new MeshBasicMaterial({
+		color: palette.ink,
+		transparent: true,
+		opacity,
+		side: DoubleSide,
+		depthWrite: false
+	});
+	if (alpha) {
+		const colours = new Float32Array(4 * alpha.length).fill(1);
+		alpha.forEach((a, v) => (colours[4 * v + 3] = a));
+		geometry.setAttribute('color', new BufferAttribute(colours, 4));
+		material.vertexColors = true;
+	}
+	const mesh = new Mesh(geometry, material);
+	mesh.frustumCulled = false;
+	mesh.renderOrder = 1;
+	return mesh;
 }
 
 interface Body {

@@ -1,9 +1,9 @@
-import { Scene, Vector3, WebGLRenderer } from 'three';
+import { Scene, Vector3, WebGLRenderer, type Material, type Mesh } from 'three';
 import { boxInverse, type Ray } from '$lib/state/bench-geometry';
 import type { DisplayMesh, Vec3 } from '$lib/workers/display-protocol';
 import { Cage, type BoxDrawing } from './cage';
 import { CameraRig } from './camera-rig';
-import { Keeping, type KeepingDrawing } from './keeping';
+import { Keeping, lockedMesh, type KeepingDrawing } from './keeping';
 import { readPalette, type Palette } from './palette';
 import { Surface } from './surface';
 
@@ -27,6 +27,8 @@ export class Viewport {
 	readonly #drawn: () => void;
 	readonly #keeping = new Keeping();
 	#keepingDrawing: KeepingDrawing | null = null;
+	#painted: Mesh | null = null;
+	#paint: Uint32Array | null = null;
 	#mesh: DisplayMesh | null = null;
 	#cages: Cage[] = [];
 	#boxes: BoxDrawing[] = [];
@@ -72,6 +74,7 @@ export class Viewport {
 		this.#surface.setPalette(this.#palette);
 		this.setBoxes(this.#boxes, this.#dim);
 		this.setKeeping(this.#keepingDrawing);
+		this.setPaint(this.#paint);
 	}
 
 	setMesh(mesh: DisplayMesh | null) {
@@ -128,6 +131,22 @@ export class Viewport {
 		this.invalidate();
 	}
 
+	/** Triangles painted just now, ascending ids; null: nobody paints. */
+	setPaint(triangles: Uint32Array | null) {
+		this.#paint = triangles;
+		if (this.#painted) {
+			this.#scene.remove(this.#painted);
+			this.#painted.geometry.dispose();
+			(this.#painted.material as Material).dispose();
+			this.#painted = null;
+		}
+		if (triangles && triangles.length > 0 && this.#mesh) {
+			this.#painted = lockedMesh(triangles, this.#mesh, this.#palette);
+			this.#scene.add(this.#painted);
+		}
+		this.invalidate();
+	}
+
 	setRing(centre: Vec3 | null, radius: number) {
 		this.#surface.setRing(centre, radius);
 		this.invalidate();
@@ -165,6 +184,7 @@ export class Viewport {
 		this.rig.dispose();
 		this.#surface.dispose();
 		this.#keeping.clear();
+		this.setPaint(null);
 		for (const cage of this.#cages) cage.dispose();
 		this.#renderer.dispose();
 		this.#renderer.domElement.remove();
