@@ -11,7 +11,7 @@ export const senseWords: Record<Objective['sense'], string> = {
 
 export const roleWords: Record<Role, { name: string; can: string }> = {
 	engineer: { name: 'Engineer', can: 'uploads, moves, enters results, decides who is in the study' },
-	reviewer: { name: 'Reviewer', can: 'reads everything, for packaging, styling or quality' },
+	reviewer: { name: 'Reviewer', can: 'reads everything and draws keep-outs, for packaging, styling or quality' },
 	viewer: { name: 'Viewer', can: 'reads everything' }
 };
 

@@ -33,6 +33,8 @@ export class MoveState {
 	/** How far inward and outward a vertex may go, metres; null: as far as it will. */
 	inward = $state<number | null>(null);
 	outward = $state<number | null>(null);
+	/** The box in which those two hold; null: everywhere. */
+	boundedIn = $state<string | null>(null);
 	/** Least wall thickness, metres; null: any. */
 	thickness = $state<number | null>(null);
 	/** Smallest radius of curvature where the surface moves, metres; null: not checked. */
@@ -78,7 +80,8 @@ export class MoveState {
 				constraints.push({
 					kind: 'displacement',
 					...(inward === null ? {} : { inward }),
-					...(outward === null ? {} : { outward })
+					...(outward === null ? {} : { outward }),
+					...(this.used.some((b) => b.id === this.boundedIn) ? { boxId: this.boundedIn! } : {})
 				});
 			}
 			if (this.thickness !== null) constraints.push({ kind: 'thickness', least: this.thickness });
