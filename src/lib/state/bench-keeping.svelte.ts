@@ -30,6 +30,8 @@ export class KeepingState {
 	#gesture: KeepOut | null = null;
 	/** Saves of one thing follow each other: each is made on the version that the one before gave. */
 	readonly #turns: Record<string, Promise<void>> = {};
+	/** Edits of one thing that are shown and not on their way yet. */
+	readonly #waiting: Record<string, number> = {};
 	readonly #asked = new Set<string>();
 
 	/** `stored`: called with both lists whenever the server has something new. */
@@ -103,7 +105,7 @@ export class KeepingState {
 		void this.#save(id, async () => {
 			const { name, side, clearance, geometry, version } = this.keepOuts.find((k) => k.id === id)!;
 			const body = { name, side, clearance, version, ...(geometry.kind === 'mesh' ? {} : { geometry }) };
-			this.#put('keepOut', await api.replaceKeepOut({ id, body }));
+			this.#settle('keepOut', await api.replaceKeepOut({ id, body }));
 		});
 	}
 
@@ -118,14 +120,17 @@ export class KeepingState {
 		this.#gesture = null;
 		this.dragging = false;
 		const now = before && this.keepOuts.find((k) => k.id === before.id);
-		if (now && now !== before && now.geometry.kind !== 'mesh') this.changeKeepOut(now.id, { geometry: now.geometry });
+		if (!now || now.geometry === before.geometry || now.geometry.kind === 'mesh') return;
+		this.changeKeepOut(now.id, { geometry: now.geometry });
 	}
 
 	/** Ends a drag as if it had not been. */
 	abandon() {
-		if (this.#gesture) this.#show('keepOut', this.#gesture);
+		const before = this.#gesture;
 		this.#gesture = null;
 		this.dragging = false;
+		const now = before && this.keepOuts.find((k) => k.id === before.id);
+		if (now) this.#show('keepOut', { ...now, geometry: before.geometry });
 	}
 
 	changeLock(id: string, patch: Partial<LockCreate>) {
@@ -134,7 +139,7 @@ export class KeepingState {
 		this.#show('lock', { ...before, ...patch });
 		void this.#save(id, async () => {
 			const { name, patches, painted, blend, version } = this.locks.find((l) => l.id === id)!;
-			this.#put('lock', await api.replaceLock({ id, body: { name, patches, painted, blend, version } }));
+			this.#settle('lock', await api.replaceLock({ id, body: { name, patches, painted, blend, version } }));
 		});
 	}
 
@@ -161,7 +166,9 @@ export class KeepingState {
 	}
 
 	#save(id: string, work: () => Promise<void>): Promise<void> {
+		this.#waiting[id] = (this.#waiting[id] ?? 0) + 1;
 		const turn = (this.#turns[id] ?? Promise.resolve()).then(async () => {
+			this.#waiting[id]--;
 			this.saving++;
 			try {
 				await work();
@@ -185,6 +192,15 @@ export class KeepingState {
 	#show(kind: LimitKind, thing: KeepOut | Lock) {
 		if (kind === 'keepOut') this.keepOuts = put(this.keepOuts, thing as KeepOut);
 		else this.locks = put(this.locks, thing as Lock);
+	}
+
+	/** What a save gave. Of an edit that was made meanwhile only the version is new: the edit's own save is based on it. */
+	#settle(kind: LimitKind, stored: KeepOut | Lock) {
+		const { id, version } = stored;
+		const list: (KeepOut | Lock)[] = kind === 'keepOut' ? this.keepOuts : this.locks;
+		const shown = list.find((thing) => thing.id === id);
+		if (shown && (this.#waiting[id] > 0 || this.#gesture?.id === id)) this.#show(kind, { ...shown, version });
+		else this.#put(kind, stored);
 	}
 
 	#put(kind: LimitKind, thing: KeepOut | Lock) {
