@@ -130,12 +130,10 @@ test('a keep-out, a lock, symmetry and a rehearsal, and a move under them', asyn
 	await bench.type('Free side z', '0');
 	await bench.type('Through x', String(-HALF_LENGTH - 1));
 	await bench.type('Name', 'Bulkhead');
-	await expect
-		.poll(plane)
-		.toMatchObject({
-			name: 'Bulkhead',
-			geometry: { kind: 'halfSpace', point: [-1.201, expect.anything(), expect.anything()], normal: [1, 0, 0] }
-		});
+	await expect.poll(plane).toMatchObject({
+		name: 'Bulkhead',
+		geometry: { kind: 'halfSpace', point: [-1.201, expect.anything(), expect.anything()], normal: [1, 0, 0] }
+	});
 
 	// A lock by patch, put away and back, and one painted on the surface.
 	await bench.sheet.getByRole('button', { name: 'Lock patches' }).click();
