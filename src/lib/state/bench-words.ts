@@ -38,6 +38,12 @@ export const leastRadius = {
 		'Which rule applies here is for the local codes and licensed practice to say.'
 };
 
+/** `N per m²`, of what a move changes. */
+export function perArea(objective: Objective | undefined): string {
+	const unit = objective?.unit;
+	return `${unit && unit !== '1' ? `${unit} ` : ''}per m²`;
+}
+
 export const checkNames: Record<string, string> = {
 	flipped: 'Flipped triangles',
 	minAngle: 'Smallest angle',

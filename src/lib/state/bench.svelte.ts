@@ -15,6 +15,7 @@ import type {
 	Share,
 	Vec3
 } from '$lib/workers/display-protocol';
+import { sameBaseline } from './bench-lineage';
 import { designBox, lockedTriangles, roundTo, shownMove, type Ray } from './bench-geometry';
 import { BoxesState } from './bench-boxes.svelte';
 import { KeepingState } from './bench-keeping.svelte';
@@ -24,6 +25,9 @@ import { MoveState, type Preview } from './bench-move.svelte';
 export type Layer = FieldName | 'none';
 export type Exaggeration = 1 | 5 | 20;
 export const exaggerations: Exaggeration[] = [1, 5, 20];
+
+/** What is read off under the cursor, in this order. */
+export const pickedFields = ['map', 'move', 'gain', 'distance'] as const satisfies readonly FieldName[];
 
 const PER_MM = 1e-3;
 export const HISTOGRAM_BINS = 48;
@@ -50,6 +54,8 @@ export class BenchState {
 
 	layer = $state<Layer>('map');
 	mapId = $state<string | null>(null);
+	/** Chosen to measure distances from; null: the parent. */
+	distanceId = $state<string | null>(null);
 	fields = $state.raw<Partial<Record<FieldName, DisplayField>>>({});
 	/** Set by hand; null: the robust limit. */
 	limits = $state.raw<Partial<Record<FieldName, number>>>({});
@@ -113,6 +119,12 @@ export class BenchState {
 		return maps.find((m) => m.id === this.mapId) ?? maps[0] ?? null;
 	});
 	readonly parent = $derived(this.shapes.find((s) => s.id === this.shape?.parentId) ?? null);
+	/** Shapes over the same triangles, by which distances can be measured: those of the same baseline. */
+	readonly comparable = $derived(sameBaseline(this.shapes, this.shape?.id ?? null));
+	/** The shape from which the layer of distances counts: the parent, unless another is chosen. */
+	readonly distanceFrom = $derived(
+		this.comparable.find((s) => s.id === this.distanceId) ?? this.parent ?? this.comparable[0] ?? null
+	);
 	readonly objectives = $derived(this.study?.objectives ?? []);
 	/** The objective that the page speaks of first: the heaviest of those that are to get better. */
 	readonly mainObjective = $derived.by(() => {
@@ -176,7 +188,7 @@ export class BenchState {
 			this.meshOf = shape.id;
 			if (!this.#settled) this.#settle(mesh);
 			await this.#loadMap();
-			if (this.layer === 'parent') await this.show('parent');
+			if (this.layer === 'distance') await this.show('distance');
 			else if (this.layer === 'map' && !this.map) this.layer = 'none';
 		} catch (cause) {
 			if (load === this.#loads) this.problem = asProblem(cause);
@@ -186,12 +198,10 @@ export class BenchState {
 	}
 
 	async show(layer: Layer) {
-		if (layer === 'parent' && !this.fields.parent && this.parent) {
-			const positions = await bytes(apiPath('getPositions', { id: this.parent.id }));
-			await this.#keep(
-				'parent',
-				this.#worker.ask('difference', { positions, metresPerUnit: this.metresPerUnit }, [positions])
-			);
+		if (layer === 'distance' && !this.fields.distance && !(await this.#measureDistance())) return;
+		if (layer === 'gain' && !this.fields.gain) {
+			if (!this.fields.map || !this.fields.move) layer = this.map ? 'map' : 'none';
+			else await this.#keep('gain', this.#worker.ask('gain', {}));
 		}
 		this.layer = layer;
 		await this.countHistogram();
@@ -203,6 +213,16 @@ export class BenchState {
 		const { map: _old, ...limits } = this.limits;
 		this.limits = limits;
 		await this.#loadMap(true);
+	}
+
+	/** Another shape to measure distances from. */
+	async measureFrom(id: string) {
+		this.distanceId = id;
+		const { distance: _old, ...fields } = this.fields;
+		const { distance: _limit, ...limits } = this.limits;
+		this.fields = fields;
+		this.limits = limits;
+		await this.show('distance');
 	}
 
 	setLimit(limit: number | null) {
@@ -230,7 +250,7 @@ export class BenchState {
 	/** What lies under a line of sight; null: nothing. */
 	look(ray: Ray): Promise<Pick | null> {
 		const on = this.movedShown ? 'moved' : 'rest';
-		return this.#worker.ask('pick', { ...ray, on, fields: ['map', 'move', 'parent'] });
+		return this.#worker.ask('pick', { ...ray, on, fields: [...pickedFields] });
 	}
 
 	/** How much of the surface the selected box holds. While a handle moves, only the newest place is asked for. */
@@ -319,6 +339,7 @@ export class BenchState {
 		const values = await bytes(apiPath('getMapValues', { id: map.id }));
 		if (this.map?.id !== map.id) return;
 		await this.#keep('map', this.#worker.ask('map', { values, scale: PER_MM }, [values]));
+		await this.#renewGain();
 		if (this.layer === 'none') this.layer = 'map';
 		await this.countHistogram();
 	}
@@ -331,7 +352,8 @@ export class BenchState {
 			if (this.move.preview?.answer !== answer) return;
 			this.moved = moved;
 			this.fields = { ...this.fields, move: moved.field };
-			if (this.layer === 'move') await this.countHistogram();
+			await this.#renewGain();
+			if (this.layer === 'move' || this.layer === 'gain') await this.countHistogram();
 		} catch (cause) {
 			this.problem = asProblem(cause);
 		}
@@ -340,9 +362,28 @@ export class BenchState {
 	#forgetMove() {
 		this.moved = null;
 		this.move.preview = null;
-		const { move: _gone, ...fields } = this.fields;
+		const { move: _gone, gain: _with, ...fields } = this.fields;
 		this.fields = fields;
-		if (this.layer === 'move') this.layer = 'map';
+		if (this.layer === 'move' || this.layer === 'gain') this.layer = 'map';
+	}
+
+	/** Map or move are new: what was made of both is made again when it is on show, else when it is asked for. */
+	async #renewGain() {
+		const { gain: _old, ...fields } = this.fields;
+		if (this.layer === 'gain' && fields.map && fields.move) await this.#keep('gain', this.#worker.ask('gain', {}));
+		else this.fields = fields;
+	}
+
+	/** False: another shape came meanwhile, or there is nothing to measure from. */
+	async #measureDistance(): Promise<boolean> {
+		const from = this.distanceFrom;
+		const load = this.#loads;
+		if (!from) return false;
+		const positions = await bytes(apiPath('getPositions', { id: from.id }));
+		if (load !== this.#loads || this.distanceFrom?.id !== from.id) return false;
+		const input = { positions, metresPerUnit: this.metresPerUnit };
+		await this.#keep('distance', this.#worker.ask('difference', input, [positions]));
+		return true;
 	}
 
 	async #keep(name: FieldName, field: Promise<DisplayField>) {

@@ -144,6 +144,11 @@ export function histogramOf(values: Float32Array, areas: Float32Array, extent: n
 	return out;
 }
 
+/** a times b, vertex by vertex; both n, borrowed. */
+export function product(a: Float32Array, b: Float32Array): Float32Array {
+	return a.map((x, v) => x * b[v]);
+}
+
 /** (to - from) . normals at each vertex, times `scale`. All borrowed, n x 3. */
 export function along(normals: Float32Array, from: Float32Array, to: Float32Array, scale: number): Float32Array {
 	const out = new Float32Array(normals.length / 3);

@@ -5,7 +5,7 @@
 import { BufferAttribute, BufferGeometry, DoubleSide, Ray, Vector3 } from 'three';
 import { MeshBVH } from 'three-mesh-bvh';
 import { embed, latticeMotion, lockWeights, toMetres, type DesignBox, type LatticeMotion } from '$lib/morph';
-import { along, averaged, boundsOf, histogramOf, scaled, spreadOf, vertexNormals } from './display-kernels';
+import { along, averaged, boundsOf, histogramOf, product, scaled, spreadOf, vertexNormals } from './display-kernels';
 import { SurfaceReach } from './paint-kernels';
 import type {
 	DisplayCall,
@@ -60,10 +60,11 @@ export class DisplayModel {
 		difference: ({ positions, metresPerUnit }) => {
 			const { positions: here, normals } = this.#surface;
 			const there = scaled(this.#sized(new Float32Array(positions), here.length), metresPerUnit);
-			return this.#keep('parent', along(normals, there, here, MM_PER_M));
+			return this.#keep('distance', along(normals, there, here, MM_PER_M));
 		},
 		move: ({ boxes, lattices, field, exaggeration }) => this.#move(boxes, lattices, field ?? null, exaggeration),
 		exaggerate: ({ exaggeration }) => this.#draw(exaggeration),
+		gain: () => this.#gain(),
 		histogram: ({ field, extent, bins }) => {
 			const values = this.#fields.get(field);
 			return values ? histogramOf(values, this.#surface.areas, extent, bins) : new Float32Array(bins);
@@ -112,7 +113,17 @@ export class DisplayModel {
 	#map(values: Float32Array, scale: number): DisplayField {
 		this.#sized(values, this.#surface.areas.length);
 		const shown = scaled(values, scale);
+		this.#fields.delete('gain');
 		return { ...this.#keep('map', shown), levels: averaged(shown, this.#surface.triangles, LEVEL_PASSES) };
+	}
+
+	#gain(): DisplayField {
+		const map = this.#fields.get('map');
+		const move = this.#fields.get('move');
+		if (!map || !move) throw new Error('Gain density needs a map and a previewed move.');
+		const values = product(map, move);
+		const levels = averaged(values, this.#surface.triangles, LEVEL_PASSES);
+		return { ...this.#keep('gain', values), levels };
 	}
 
 	/** Keeps a field for later questions and hands out a copy with its spread. */
@@ -169,6 +180,7 @@ export class DisplayModel {
 				MM_PER_M * (shift[at] * normals[at] + shift[at + 1] * normals[at + 1] + shift[at + 2] * normals[at + 2]);
 		});
 		this.#fields.set('move', values);
+		this.#fields.delete('gain');
 		this.#moved = { vertices, displacement, positions };
 		return this.#draw(exaggeration);
 	}

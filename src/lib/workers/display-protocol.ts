@@ -63,7 +63,8 @@ export interface Pick {
 	values: (number | null)[];
 }
 
-export type FieldName = 'map' | 'move' | 'parent';
+/** `gain`: change of the map's objective that the move makes, by area; `distance`: from another shape. */
+export type FieldName = 'map' | 'move' | 'gain' | 'distance';
 
 export interface Sight {
 	origin: Vec3;
@@ -103,6 +104,11 @@ export interface DisplayCalls {
 	];
 	/** The last move again, exaggerated otherwise. */
 	exaggerate: [{ exaggeration: number }, DisplayMove];
+	/**
+	 * The map times the move's displacement along the normal: the objective's change to first order, per m^2 of surface. Needs
+	 * both.
+	 */
+	gain: [Record<string, never>, DisplayField];
 	histogram: [{ field: FieldName; extent: number; bins: number }, Float32Array];
 	share: [{ box: DesignBox; field: FieldName | null }, Share];
 	/** `on`: the surface that is hit. */

@@ -58,6 +58,17 @@ describe('the display model', () => {
 		});
 		expect(worst).toBeLessThan(1e-6);
 
+		// Summed over the surface, the gain density is the change that the engine predicts (to first order, float32).
+		expect(() => model.calls.gain({})).toThrow(/needs a map/);
+		model.calls.map({ values: Float32Array.from(values).buffer, scale: 0.001 });
+		const gain = model.calls.gain({});
+		const sum = gain.values.reduce((s, x, v) => s + x * surface.mass[v], 0);
+		const predicted = solution.moved.reduce(
+			(s, v, i) => s + [0, 1, 2].reduce((p, k) => p + gradient[3 * v + k] * solution.displacement[3 * i + k], 0),
+			0
+		);
+		expect(sum / predicted).toBeCloseTo(1, 4);
+
 		// Drawn larger, the values stay what they are, in mm along the normal.
 		const large = model.calls.exaggerate({ exaggeration: 20 });
 		expect(large.field.values).toEqual(moved.field.values);
