@@ -5,6 +5,7 @@ import type { Shape } from '$lib/api/schemas/shapes';
 import type { Study } from '$lib/api/schemas/studies';
 import type { BoxesState } from './bench-boxes.svelte';
 import { bodyOf } from './bench-boxes.svelte';
+import { HandState } from './bench-hand.svelte';
 import type { KeepingState } from './bench-keeping.svelte';
 
 export type VolumeChoice = 'hold' | 'atLeast' | 'atMost' | 'free';
@@ -41,6 +42,8 @@ export class MoveState {
 	radius = $state<number | null>(null);
 	/** Keep the study's symmetry plane, where it has one. */
 	symmetric = $state(true);
+	/** Control points moved by hand. */
+	readonly hand = new HandState();
 	/** Keep-outs and locks that this move does without. */
 	leftOut = $state.raw<string[]>([]);
 	/** Preview by itself when something changes. */
@@ -96,6 +99,7 @@ export class MoveState {
 			...(Object.keys(this.weights).length ? { weights: this.weights } : {}),
 			lockIds: this.keeping.locks.filter((l) => this.locks(l.id)).map((l) => l.id),
 			...(symmetry ? { symmetry: this.symmetric } : {}),
+			...(this.mode === 'lattice' ? this.hand.recipe(this.used) : {}),
 			constraints
 		};
 	});

@@ -21,6 +21,10 @@ export interface BoxDrawing {
 	selected: boolean;
 	/** Taken into the next move. */
 	used: boolean;
+	/** What was moved by hand, nPoints x 3 metres, drawn so many times as large. */
+	hand?: { displacement: number[]; factor: number } | null;
+	/** Chosen control points. */
+	chosen?: number[];
 }
 
 const POINT_PX = 7;
@@ -38,18 +42,22 @@ const pointShader = {
 		void main() {
 			vHeld = held;
 			gl_Position = projectionMatrix * modelViewMatrix * vec4(position, 1.0);
-			gl_PointSize = uSize;
+			gl_PointSize = held > 1.5 ? 1.7 * uSize : uSize;
 		}
 	`,
 	fragmentShader: /* glsl */ `
 		precision highp float;
-		uniform vec3 uInk, uGround;
+		uniform vec3 uInk, uGround, uChosen;
 		uniform float uAlpha, uSize;
 		varying float vHeld;
 		void main() {
 			vec2 d = abs(gl_PointCoord - 0.5) * uSize;
 			float side = max(d.x, d.y);
 			float half_ = 0.5 * uSize;
+			if (vHeld > 1.5) {
+				gl_FragColor = vec4(vHeld > 2.5 ? mix(uGround, uChosen, step(0.3 * uSize, side)) : uChosen, uAlpha);
+				return;
+			}
 			if (vHeld > 0.5) {
 				if (side > 0.5 * uSize - 0.2) discard;
 				gl_FragColor = vec4(mix(uGround, uInk, step(half_ - 0.24 * uSize, side)), uAlpha);
@@ -88,6 +96,7 @@ export class Cage {
 				uniforms: {
 					uInk: { value: new Color() },
 					uGround: { value: new Color() },
+					uChosen: { value: new Color() },
 					uAlpha: { value: depthBehind ? 0.22 : 1 },
 					uSize: { value: POINT_PX }
 				}
@@ -106,14 +115,19 @@ export class Cage {
 		}
 	}
 
-	draw({ box, selected, used }: BoxDrawing, palette: Palette, pixelRatio: number) {
+	draw({ box, selected, used, hand, chosen }: BoxDrawing, palette: Palette, pixelRatio: number) {
 		const at = corners.map((c) => boxPoint(box, c));
 		this.#edges.setAttribute('position', floats(edges.flatMap(([a, b]) => [...at[a], ...at[b]])));
 		for (const part of this.#selectedParts) part.visible = selected;
 		if (selected) {
 			const place = restPoints(box);
+			hand?.displacement.forEach((x, i) => (place[i] += hand.factor * x));
+			const held = heldPoints(box.lattice, box.held);
+			for (const p of box.heldPoints ?? []) held[p] = 1;
+			const marks = Float32Array.from(held);
+			for (const p of chosen ?? []) marks[p] += 2;
 			this.#points.setAttribute('position', new BufferAttribute(place, 3));
-			this.#points.setAttribute('held', new BufferAttribute(Float32Array.from(heldPoints(box.lattice, box.held)), 1));
+			this.#points.setAttribute('held', new BufferAttribute(marks, 1));
 			this.#lattice.setAttribute('position', new BufferAttribute(latticeLines(box.lattice, place), 3));
 		}
 		const strength = selected ? 0.85 : used ? 0.45 : 0.22;
@@ -122,6 +136,7 @@ export class Cage {
 		for (const m of this.#pointMaterials) {
 			(m.uniforms.uInk.value as Color).copy(palette.ink);
 			(m.uniforms.uGround.value as Color).copy(palette.ground);
+			(m.uniforms.uChosen.value as Color).copy(palette.copper);
 			m.uniforms.uSize.value = POINT_PX * pixelRatio;
 		}
 	}
