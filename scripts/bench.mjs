@@ -40,19 +40,29 @@ if (!existsSync(join(root, 'node_modules', 'esbuild'))) {
 }
 
 const out = join(root, 'node_modules', '.cache', 'planish', 'bench.mjs');
+const costOut = join(root, 'node_modules', '.cache', 'planish', 'bench-cost.mjs');
 mkdirSync(dirname(out), { recursive: true });
 const { build } = await import('esbuild');
-await build({
-	entryPoints: [join(root, 'bench', 'run.ts')],
-	outfile: out,
-	bundle: true,
-	platform: 'node',
-	format: 'esm',
-	target: 'node20',
-	logLevel: 'error'
-});
+for (const [name, outfile] of [
+	['run.ts', out],
+	['cost.ts', costOut]
+]) {
+	await build({
+		entryPoints: [join(root, 'bench', name)],
+		outfile,
+		bundle: true,
+		platform: 'node',
+		format: 'esm',
+		target: 'node20',
+		logLevel: 'error',
+		alias: { $lib: join(root, 'src', 'lib') }
+	});
+}
 const { runStandard } = await import(pathToFileURL(out).href);
+const { runCost } = await import(pathToFileURL(costOut).href);
 const figures = runStandard(level, repeat);
+// What a move of the demo's pod with all kinds of constraints costs against a plain one.
+figures.constraints_cost = runCost(repeat);
 
 let yardstick = null;
 if (args.includes('--compare')) {
@@ -77,8 +87,12 @@ function printTable() {
 		? `yardstick ${yardstick.lattice_total} s, ratio ${(yardstick.lattice_total / figures.lattice_total).toFixed(1)}`
 		: '';
 	line('lattice_total', figures.lattice_total.toFixed(4), `s ${same}`);
+	const { plain_seconds, constrained_seconds, ratio, binding_places } = figures.constraints_cost;
+	line('demo: plain move', plain_seconds.toFixed(4), 's (one box, held volume)');
+	const all = `s (three boxes, keep-out mesh, wall, held objective; binds at ${binding_places} places)`;
+	line('demo: move with constraints', constrained_seconds.toFixed(4), `${all}, ratio ${ratio.toFixed(1)}`);
 	for (const [name, value] of Object.entries(figures)) {
-		if (name === 'seconds' || name === 'lattice_total') continue;
+		if (name === 'seconds' || name === 'lattice_total' || name === 'constraints_cost') continue;
 		const theirs = yardstick && typeof yardstick[name] === 'number' ? yardstick[name] : null;
 		const difference =
 			theirs === null || typeof value !== 'number' || theirs === 0 || name === 'total'
