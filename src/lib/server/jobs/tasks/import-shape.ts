@@ -1,6 +1,8 @@
-/** Reads an uploaded STL and stores it as a shape of its study. */
+/** Reads an uploaded surface, in any of the formats, and stores it as a shape of its study. */
 import { randomUUID } from 'node:crypto';
-import { readStl, surfaceMeasures, toMetres, type Mesh, type SurfaceMeasures } from '$lib/morph';
+import { readSurface } from '$lib/formats/read';
+import type { SurfaceFile } from '$lib/formats/types';
+import { surfaceMeasures, toMetres, type SurfaceMeasures } from '$lib/morph';
 import { POSITION_CHUNK_BYTES, putContent, readWhole } from '../../content/store';
 import { recordEvent } from '../../repositories/audit';
 import { insertShape, insertTopology, takeShapeNumber } from '../../repositories/shapes';
@@ -13,13 +15,15 @@ interface Payload {
 	name?: string;
 }
 
-/** @throws MorphError stl-*; Stopped; NotOurs */
+/** @throws MorphError of the file; Stopped; NotOurs */
 export async function importShapeTask(task: JobTask): Promise<void> {
 	const { job, control } = task;
 	const { uploadId, filename, name } = job.payload as unknown as Payload;
 	const metres = await metresPerUnit(job.studyId);
 	control.stage('Reading the file', 0, 0.1);
-	const mesh = readStl(await readWhole(uploadId), { checkpoint: control.stage('Reading the file', 0.1, 0.5) });
+	const mesh = await readSurface(await readWhole(uploadId), filename, {
+		checkpoint: control.stage('Reading the file', 0.1, 0.5)
+	});
 	const checkpoint = control.stage('Measuring the surface', 0.5, 0.7);
 	const measures = surfaceMeasures(toMetres(mesh.positions, metres), mesh.triangles, { checkpoint });
 	const progress = control.stage('Storing the shape', 0.7, 1);
@@ -45,7 +49,7 @@ export async function importShapeTask(task: JobTask): Promise<void> {
 					studyId: job.studyId,
 					number,
 					parentId: null,
-					name: name ?? (number === 0 ? 'Baseline' : filename.replace(/\.stl$/i, '')),
+					name: name ?? (number === 0 ? 'Baseline' : filename.replace(/(\.(stl|obj|ply|vtk|vtp))?(\.(gz|zip))?$/i, '')),
 					topologyId,
 					positionsId,
 					originalId: uploadId,
@@ -70,7 +74,7 @@ export async function importShapeTask(task: JobTask): Promise<void> {
 function topologyRow(
 	id: string,
 	studyId: string,
-	mesh: Mesh,
+	mesh: SurfaceFile,
 	measures: SurfaceMeasures,
 	contents: { trianglesId: string; attributesId: string | null }
 ) {
@@ -82,7 +86,8 @@ function topologyRow(
 		triangleCount: measures.triangleCount,
 		...contents,
 		patches: mesh.patches,
-		encoding: mesh.encoding,
+		// How the STL goes out unless it is asked for otherwise: as text where text came in.
+		encoding: mesh.encoding === 'ascii' ? ('ascii' as const) : ('binary' as const),
 		health: { boundaryEdges, nonManifoldEdges, inconsistentEdges, degenerateTriangles }
 	};
 }
