@@ -4,11 +4,12 @@ import JSZip from 'jszip';
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
 import { objChunks } from '$lib/formats/obj-write';
 import { plyChunks } from '$lib/formats/ply-write';
+import { readSurface } from '$lib/formats/read';
 import { vtpChunks } from '$lib/formats/vtp-write';
 import { joined } from '$lib/formats/writable';
 import { newScene, upload, type Scene } from '../factories/scene';
 import { readSoup, soupArea, soupOf, soupVolume, writeBinarySoup } from '../factories/stl';
-import { ellipsoid } from '../factories/surfaces';
+import { csvOf, ellipsoid } from '../factories/surfaces';
 import { startServer, type TestServer } from '../harness/server';
 
 let server: TestServer;
@@ -90,5 +91,32 @@ describe('surfaces in', () => {
 		const job = await upload(server, scene.token, path, CUBE.replace('f 5 6 7 8', 'f 5 6 7 99'));
 		expect(job).toMatchObject({ state: 'failed', error: { code: 'bad-file' } });
 		expect(job.error?.detail).toMatch(/torn\.obj.*[Ll]ine 18/);
+	});
+});
+
+describe('files out', () => {
+	it('are the shape again, triangle by triangle, with its patches and how it moved', async () => {
+		const study = await newScene(server, 'm');
+		const parent = await study.importShape(bytes(plyChunks(surface)), 'part.ply');
+		await study.importMap(
+			parent.id,
+			csvOf(soup, (x) => x)
+		);
+		const box = await study.addBox({ centre: [1, 0, 0], halfSize: [1.2, 1.2, 1.2] });
+		const { shapeId } = await study.move(parent.id, { boxIds: [box.id], step: 0.01 });
+		const child = await study.soup(shapeId);
+		for (const format of ['obj', 'ply', 'vtp'] as const) {
+			const read = await readSurface(await study.file(shapeId, format), `child.${format}`);
+			expect(soupOf(read.positions, read.triangles).corners).toEqual(child.corners);
+			expect(read.patches.map((p) => [p.name, p.triangleCount])).toEqual([
+				['front', half],
+				['rear', half]
+			]);
+			if (format === 'obj') continue;
+			const moved = read.arrays.filter((a) => a.on === 'point' && a.name.startsWith('displacement'));
+			const largest = moved.reduce((max, a) => a.values.reduce((m, x) => Math.max(m, Math.abs(x)), max), 0);
+			expect(largest).toBeGreaterThan(0.005);
+			expect(largest).toBeLessThan(0.0101);
+		}
 	});
 });

@@ -10,3 +10,16 @@ export const stlHref = (shapeId: string, encoding?: 'binary' | 'ascii') =>
 	apiPath('getStl', { id: shapeId }, { encoding });
 export const handoverHref = (shapeId: string) => apiPath('getHandover', { id: shapeId });
 export const originalHref = (shapeId: string) => apiPath('getOriginal', { id: shapeId });
+/** The shape in the other formats, for a download menu. */
+export const meshItems = (shapeId: string) =>
+	(
+		[
+			['OBJ', 'getObj'],
+			['PLY', 'getPly'],
+			['VTP', 'getVtp']
+		] as const
+	).map(([label, name]) => ({
+		label,
+		href: apiPath(name, { id: shapeId }),
+		download: true
+	}));

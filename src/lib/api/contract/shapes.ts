@@ -73,6 +73,34 @@ export const shapesOperations = {
 		status: 200,
 		answer: 'bytes'
 	}),
+	getObj: op({
+		method: 'GET',
+		path: '/api/shapes/{id}/files/obj',
+		summary: 'The shape as OBJ, in the study’s length unit',
+		access: 'viewer',
+		subject: 'shape',
+		status: 200,
+		answer: 'bytes'
+	}),
+	getPly: op({
+		method: 'GET',
+		path: '/api/shapes/{id}/files/ply',
+		summary: 'The shape as PLY, in the study’s length unit, with the displacement from its parent as an array',
+		access: 'viewer',
+		subject: 'shape',
+		status: 200,
+		answer: 'bytes'
+	}),
+	getVtp: op({
+		method: 'GET',
+		path: '/api/shapes/{id}/files/vtp',
+		summary:
+			'The shape as VTK XML PolyData, in the study’s length unit, with the displacement from its parent as an array',
+		access: 'viewer',
+		subject: 'shape',
+		status: 200,
+		answer: 'bytes'
+	}),
 	getHandover: op({
 		method: 'GET',
 		path: '/api/shapes/{id}/files/handover',

@@ -14,6 +14,7 @@ export interface Refusal {
 
 export type FileRequest =
 	| { format: 'stl'; shapeId: string; encoding: 'binary' | 'ascii' }
+	| { format: 'obj' | 'ply' | 'vtp'; shapeId: string }
 	| { format: 'handover'; shapeId: string; stlName: string }
 	/** A map as a density at vertices, float32 little-endian. */
 	| { format: 'density'; mapId: string };

@@ -95,6 +95,19 @@ export async function stlFile(shapeId: string, encoding?: 'binary' | 'ascii'): P
 	};
 }
 
+const MESH_TYPES = { obj: 'model/obj', ply: 'application/octet-stream', vtp: 'application/xml' };
+
+/** The shape in another format, with its patches; VTP and PLY carry the displacement from the parent as an array. */
+export async function meshFile(shapeId: string, format: keyof typeof MESH_TYPES): Promise<FileAnswer> {
+	const { number } = await requireShape(shapeId);
+	return {
+		etag: `"${format}-${shapeId}"`,
+		type: MESH_TYPES[format],
+		filename: `${await baseName(shapeId, number)}.${format}`,
+		bytes: () => made({ format, shapeId })
+	};
+}
+
 /** The STL, the recipe and a readable account of the move. */
 export async function handoverFile(shapeId: string): Promise<FileAnswer> {
 	const shape = await requireShape(shapeId);

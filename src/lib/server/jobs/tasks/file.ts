@@ -3,9 +3,13 @@ import { createHash } from 'node:crypto';
 import { Readable } from 'node:stream';
 import type { MessagePort } from 'node:worker_threads';
 import JSZip from 'jszip';
+import { objChunks } from '$lib/formats/obj-write';
+import { plyChunks } from '$lib/formats/ply-write';
+import type { NamedArray } from '$lib/formats/types';
+import { vtpChunks } from '$lib/formats/vtp-write';
 import { displayDensity, makeSurface, stlChunks, toMetres, writeStl } from '$lib/morph';
 import { AppError } from '../../errors';
-import { findMap, findShape, findStudy } from '../../repositories/shapes';
+import { findMap, findShape, findStudy, type ShapeRow } from '../../repositories/shapes';
 import { listObjectives } from '../../repositories/studies';
 import { metresPerUnit, readGradient, readMesh } from '../../services/mesh-cache';
 import { handoverText } from '../../services/handover';
@@ -38,6 +42,10 @@ function pieces(file: FileRequest): AsyncGenerator<Uint8Array> {
 	switch (file.format) {
 		case 'stl':
 			return stl(file);
+		case 'obj':
+		case 'ply':
+		case 'vtp':
+			return mesh(file);
 		case 'handover':
 			return handover(file);
 		case 'density':
@@ -79,6 +87,27 @@ async function load(shapeId: string) {
 async function* stl({ shapeId, encoding }: Extract<FileRequest, { format: 'stl' }>): AsyncGenerator<Uint8Array> {
 	const { mesh } = await load(shapeId);
 	yield* stlChunks(mesh, { encoding, chunkTriangles: CHUNK_TRIANGLES });
+}
+
+const WRITERS = { obj: objChunks, ply: plyChunks, vtp: vtpChunks };
+
+async function* mesh({
+	shapeId,
+	format
+}: Extract<FileRequest, { format: keyof typeof WRITERS }>): AsyncGenerator<Uint8Array> {
+	const { shape, mesh } = await load(shapeId);
+	const { positions, triangles, patches } = mesh;
+	const title = `${shape.name}, shape ${shape.number}`;
+	yield* WRITERS[format]({ positions, triangles, patches, arrays: await displacement(shape, positions) }, { title });
+}
+
+/** How far each vertex went from the parent, in the study's length unit; nothing for a shape that was uploaded. */
+async function displacement(shape: ShapeRow, positions: Float32Array): Promise<NamedArray[]> {
+	const parent = shape.parentId ? await findShape(shape.parentId) : null;
+	if (!parent || parent.topologyId !== shape.topologyId) return [];
+	const before = (await readMesh(parent)).positions;
+	const values = Float64Array.from(positions, (x, i) => x - before[i]);
+	return [{ name: 'displacement', on: 'point', components: 3, values }];
 }
 
 async function* handover({
